@@ -1,0 +1,185 @@
+//! Small changes for the better: single switches, and switches that first move aside whatever
+//! stands in their way (ejection chains of depth one, after Glover 1996, Discrete Applied
+//! Mathematics 65).
+
+use super::budget::Budget;
+use super::state::{Blocker, State};
+
+/// Makes single switches that gain and break nothing until there is none: the state is then
+/// *maximal*. Not limited by the budget, as every answer promises to be maximal; each switch gains
+/// at least 1 and passes are few.
+pub(super) fn polish(state: &mut State<'_>, budget: &mut Budget<'_>) {
+    loop {
+        let mut changed = false;
+        for group in 0..state.index.groups() {
+            changed |= switch_to_best(state, group, budget);
+        }
+        if !changed {
+            return;
+        }
+    }
+}
+
+/// Switches a group to its best candidate that breaks nothing, if that gains.
+fn switch_to_best(state: &mut State<'_>, group: u32, budget: &mut Budget<'_>) -> bool {
+    let index = state.index;
+    budget.spend(index.vars(group).len());
+    let best = index
+        .allowed_vars(group)
+        .map(|var| (state.gain_of(var), var))
+        .filter(|&(gain, var)| gain > 0 && state.allows_var(var))
+        .max_by_key(|&(gain, var)| (gain, std::cmp::Reverse(var)));
+    if let Some((_, var)) = best {
+        state.switch_to(var);
+    }
+    best.is_some()
+}
+
+/// Tries an exchange for every candidate that would gain but is blocked, until none is left that
+/// helps. The state must be feasible and stays so.
+pub(super) fn exchange_all(state: &mut State<'_>, budget: &mut Budget<'_>) {
+    loop {
+        let mut changed = false;
+        for group in 0..state.index.groups() {
+            for var in state.index.allowed_vars(group) {
+                if budget.is_out() {
+                    return;
+                }
+                budget.spend(1);
+                if state.gain_of(var) > 0 {
+                    changed |= exchange(state, var, budget);
+                }
+            }
+        }
+        if !changed {
+            return;
+        }
+    }
+}
+
+/// Switches to `var`, moves what blocks it to the least loss, and fills the room that this leaves.
+/// Undone unless the objective rises.
+fn exchange(state: &mut State<'_>, var: u32, budget: &mut Budget<'_>) -> bool {
+    let before = state.objective();
+    let mut undo = Vec::new();
+    let blockers = state.blockers(state.index.choice(var));
+    record_switch(state, var, &mut undo);
+    let cleared = blockers.iter().all(|blocker| match *blocker {
+        Blocker::Forbidden => false,
+        Blocker::Clash { with } => {
+            let other = state.chosen[with.group as usize];
+            state.hits[other as usize] == 0 || move_aside(state, with.group, &mut undo, budget)
+        }
+        Blocker::Row { row, .. } => relieve(state, row as u32, var, &mut undo, budget),
+        Blocker::AnyOf { any_of } => relieve_any(state, any_of as u32, var, &mut undo, budget),
+    });
+    if cleared && state.is_feasible() {
+        fill_around(state, &mut undo, budget);
+    }
+    let better = cleared && state.is_feasible() && state.objective() > before;
+    if !better {
+        for &old in undo.iter().rev() {
+            state.switch_to(old);
+        }
+    }
+    better
+}
+
+fn record_switch(state: &mut State<'_>, var: u32, undo: &mut Vec<u32>) {
+    undo.push(state.chosen[state.index.group_of[var as usize] as usize]);
+    state.switch_to(var);
+}
+
+/// Moves a group to the best of its other candidates that breaks nothing.
+fn move_aside(
+    state: &mut State<'_>,
+    group: u32,
+    undo: &mut Vec<u32>,
+    budget: &mut Budget<'_>,
+) -> bool {
+    let current = state.chosen[group as usize];
+    budget.spend(state.index.vars(group).len());
+    let best = (state.index.allowed_vars(group))
+        .filter(|&var| var != current && state.allows_var(var))
+        .max_by_key(|&var| (state.gain_of(var), std::cmp::Reverse(var)));
+    best.is_some_and(|var| {
+        record_switch(state, var, undo);
+        true
+    })
+}
+
+/// Moves groups other than that of `keep` until the row holds, least loss for the relief first.
+fn relieve(
+    state: &mut State<'_>,
+    row: u32,
+    keep: u32,
+    undo: &mut Vec<u32>,
+    budget: &mut Budget<'_>,
+) -> bool {
+    let index = state.index;
+    let kept = index.group_of[keep as usize];
+    while state.sum[row as usize] > index.slack[row as usize] {
+        let mut best: Option<(f64, u32)> = None;
+        let mut last_group = u32::MAX;
+        for &(term, _) in &index.row_terms[row] {
+            let group = index.group_of[term as usize];
+            if group == kept || group == last_group {
+                continue;
+            }
+            last_group = group;
+            budget.spend(4 * index.vars(group).len());
+            for var in index.allowed_vars(group) {
+                let relief =
+                    -state.deltas(var).find(|&(r, _)| r == row).map_or(0, |(_, delta)| delta);
+                if relief > 0 && state.allows_var(var) {
+                    let loss = -state.gain_of(var) as f64 / relief as f64;
+                    if best.is_none_or(|best| (loss, var) < best) {
+                        best = Some((loss, var));
+                    }
+                }
+            }
+        }
+        match best {
+            Some((_, var)) => record_switch(state, var, undo),
+            None => return false,
+        }
+    }
+    true
+}
+
+/// Makes the row of an any-of hold that is nearest to it.
+fn relieve_any(
+    state: &mut State<'_>,
+    any_of: u32,
+    keep: u32,
+    undo: &mut Vec<u32>,
+    budget: &mut Budget<'_>,
+) -> bool {
+    let excess = |row: u32| state.sum[row as usize] - state.index.slack[row as usize];
+    let nearest =
+        state.index.any_of_rows[any_of].iter().copied().min_by_key(|&row| (excess(row), row));
+    nearest.is_some_and(|row| relieve(state, row, keep, undo, budget))
+}
+
+/// Makes the switches that gain among the groups that share a clash or row with what was left.
+fn fill_around(state: &mut State<'_>, undo: &mut Vec<u32>, budget: &mut Budget<'_>) {
+    let index = state.index;
+    let mut near = Vec::new();
+    for &left in undo.iter() {
+        near.extend(index.hard[left].iter().copied());
+        near.extend(index.soft[left].iter().map(|&(var, _)| var));
+        for &(row, _) in &index.var_terms[left] {
+            near.extend(index.row_terms[row].iter().map(|&(var, _)| var));
+        }
+    }
+    near.sort_unstable();
+    near.dedup();
+    budget.spend(near.len());
+    near.retain(|&var| index.allowed[var as usize] && state.gain_of(var) > 0);
+    near.sort_unstable_by_key(|&var| (std::cmp::Reverse(state.gain_of(var)), var));
+    for var in near {
+        if state.gain_of(var) > 0 && state.allows_var(var) {
+            record_switch(state, var, undo);
+        }
+    }
+}

@@ -1,0 +1,35 @@
+//! The plan search: which candidate of every group to choose, so that the total value is greatest
+//! and no constraint is broken, and how far from the best the answer can be at most.
+//!
+//! It knows nothing of aviation. A [`Model`] is plain data: *groups*, of whose *candidates* exactly
+//! one is chosen; *clashes* between candidates of different groups, hard or at a cost; *rows*, sums
+//! of signed deltas that may not exceed a slack; *any-ofs*, sets of rows of which one must hold.
+//! In the terms of the literature: a set-packing problem with generalised upper bounds, knapsack
+//! rows and a few disjunctions.
+//!
+//! There is no clock here. Effort is counted in work units (about one touched term each), so the
+//! same model, seed and budget give the same answer on any machine with any number of threads;
+//! only the stop flag comes from outside.
+//!
+//! In reading order: [`model`] and [`check`] say what is asked for and judge an answer slowly and
+//! plainly; `index` and `state` make single switches cheap; `greedy` and `improve` find plans.
+
+mod budget;
+pub mod check;
+mod greedy;
+mod improve;
+mod index;
+pub mod model;
+#[cfg(test)]
+mod oracle;
+mod ranking;
+mod solve;
+mod state;
+
+pub use budget::{Progress, Watch};
+pub use check::Violation;
+pub use index::Index;
+pub use model::{AnyOf, Candidate, Choice, Clash, Cost, Defect, Group, Model, Row, choice};
+pub use ranking::{RankOptions, rank};
+pub use solve::{Presolved, Solution, SolveOptions, Stopped, solve, solve_forced};
+pub use state::{Blocker, State};

@@ -1,0 +1,200 @@
+//! The search as a whole: what is asked for, what comes back, and the order of the steps.
+
+use super::budget::{Budget, Watch};
+use super::check::Violation;
+use super::greedy;
+use super::improve;
+use super::index::Index;
+use super::model::{Choice, Defect, Model};
+use super::state::State;
+
+/// How to search.
+#[derive(Debug, Clone, PartialEq)]
+pub struct SolveOptions {
+    /// Decides between otherwise equal ways; the same seed gives the same answer.
+    pub seed: u64,
+    /// Most work to do, in units of about one touched term. Preparing and polishing are always
+    /// done, so a little more may be used.
+    pub work: u64,
+    /// Stop once (bound − objective) / max(|bound|, 1) is at most this; 0 asks for the optimum.
+    pub gap: f64,
+    /// Choices to start from, if they fit the model: the answer is at least as good as these are.
+    pub start: Option<Vec<u32>>,
+}
+
+impl Default for SolveOptions {
+    fn default() -> Self {
+        Self { seed: 0, work: 20_000_000_000, gap: 0.0, start: None }
+    }
+}
+
+/// Why the search ended.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Stopped {
+    /// The objective is proven to be the greatest possible.
+    Optimal,
+    /// The gap asked for is reached.
+    Gap,
+    /// The work budget is used up.
+    Work,
+    /// The caller's stop flag was up.
+    Asked,
+    /// It is proven that no choices satisfy the model.
+    Infeasible,
+}
+
+/// What was decided before the search proper, by reasoning alone.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub struct Presolved {
+    /// Groups in the model.
+    pub groups: usize,
+    /// Groups settled beforehand.
+    pub groups_settled: usize,
+    /// Candidates in the model, those at rest included.
+    pub candidates: usize,
+    /// Candidates ruled out beforehand.
+    pub candidates_ruled_out: usize,
+    /// Rows of the model.
+    pub rows: usize,
+    /// Rows that can't be broken by what was left.
+    pub rows_dropped: usize,
+    /// Any-ofs of the model.
+    pub any_ofs: usize,
+    /// Any-ofs that can't be broken by what was left.
+    pub any_ofs_dropped: usize,
+    /// Parts that what was left falls into, with no constraint between them.
+    pub components: usize,
+    /// Groups of the largest part.
+    pub largest_component: usize,
+}
+
+/// An answer.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Solution {
+    /// The chosen candidate of every group. Unless `violations` says otherwise, feasible and
+    /// *maximal*: no single group's switch to another allowed candidate is feasible and raises the
+    /// objective.
+    pub choices: Vec<u32>,
+    /// What the choices are worth.
+    pub objective: i64,
+    /// Proven: no feasible choices are worth more. Nothing if none is feasible, or none was found.
+    pub bound: Option<i64>,
+    /// Why the search ended.
+    pub stopped: Stopped,
+    /// What the choices break: empty unless no feasible choices were found, which can only happen
+    /// when resting candidates are forbidden or rows begin with a negative slack. It is then the
+    /// least broken set of choices met.
+    pub violations: Vec<Violation>,
+    /// What was settled by reasoning alone.
+    pub presolved: Presolved,
+    /// What one more unit of slack is worth in each of the model's rows, about: the prices behind
+    /// the bound.
+    pub row_prices: Vec<f64>,
+    /// Work done.
+    pub work: u64,
+}
+
+impl Solution {
+    /// (bound − objective) / max(|bound|, 1), if there is a bound.
+    #[must_use]
+    pub fn gap(&self) -> Option<f64> {
+        let bound = self.bound?;
+        Some((bound - self.objective) as f64 / (bound.unsigned_abs() as f64).max(1.0))
+    }
+}
+
+/// Searches for the best choices.
+///
+/// # Errors
+/// The first [`Defect`] of the model.
+pub fn solve(model: &Model, options: &SolveOptions, watch: Watch<'_>) -> Result<Solution, Defect> {
+    let index = Index::new(model)?;
+    let mut budget = Budget::new(options.work, watch);
+    let start = options.start.as_ref().filter(|start| index.fits(start));
+    let mut best = State::of_vars(&index, rest(&index));
+    greedy::fill(&mut best, &mut budget);
+    climb(&mut best, &mut budget);
+    if let Some(mut other) = start.and_then(|start| State::new(&index, start)) {
+        greedy::fill(&mut other, &mut budget);
+        climb(&mut other, &mut budget);
+        if (other.is_feasible(), other.objective()) > (best.is_feasible(), best.objective()) {
+            best = other;
+        }
+    }
+    Ok(answer(model, &best, &budget, options))
+}
+
+/// Searches for the best choices among those that contain `forced`, starting from the choices of
+/// an earlier solution of the same model. The difference of the two objectives is what the forced
+/// choice costs; with both bounds closed it is the least it can cost.
+///
+/// # Errors
+/// The first [`Defect`] of the model, or of `forced` in it.
+pub fn solve_forced(
+    model: &Model,
+    solution: &Solution,
+    forced: Choice,
+    options: &SolveOptions,
+    watch: Watch<'_>,
+) -> Result<Solution, Defect> {
+    let mut model = model.clone();
+    let unknown = Defect::UnknownChoice { choice: forced };
+    model.candidate(forced).ok_or(unknown.clone())?;
+    model.groups.get_mut(forced.group as usize).ok_or(unknown)?.fix(forced.candidate);
+    let mut start = solution.choices.clone();
+    if let Some(chosen) = start.get_mut(forced.group as usize) {
+        *chosen = forced.candidate;
+    }
+    solve(&model, &SolveOptions { start: Some(start), ..options.clone() }, watch)
+}
+
+/// Candidate 0 of every group, or the first allowed one.
+fn rest(index: &Index) -> Vec<u32> {
+    let first = |group| index.allowed_vars(group).next().unwrap_or(index.vars(group).start);
+    (0..index.groups()).map(first).collect()
+}
+
+fn climb(state: &mut State<'_>, budget: &mut Budget<'_>) {
+    if state.is_feasible() {
+        improve::polish(state, budget);
+        improve::exchange_all(state, budget);
+        improve::polish(state, budget);
+    }
+}
+
+fn answer(
+    model: &Model,
+    best: &State<'_>,
+    budget: &Budget<'_>,
+    options: &SolveOptions,
+) -> Solution {
+    let index = best.index;
+    let greatest = |group| index.allowed_vars(group).map(|var| index.value[var as usize]).max();
+    let bound: i64 = (0..index.groups()).filter_map(greatest).sum();
+    let mut solution = Solution {
+        choices: best.choices(),
+        objective: best.objective(),
+        bound: best.is_feasible().then_some(bound),
+        stopped: if budget.told_to_stop() { Stopped::Asked } else { Stopped::Work },
+        violations: Vec::new(),
+        presolved: Presolved {
+            groups: model.groups.len(),
+            candidates: index.value.len(),
+            rows: model.rows.len(),
+            any_ofs: model.any_ofs.len(),
+            components: 1,
+            largest_component: model.groups.len(),
+            ..Presolved::default()
+        },
+        row_prices: vec![0.0; model.rows.len()],
+        work: budget.used(),
+    };
+    match solution.gap() {
+        Some(0.0) => solution.stopped = Stopped::Optimal,
+        Some(gap) if gap <= options.gap => solution.stopped = Stopped::Gap,
+        Some(_) => {}
+        None => solution.violations = model.violations(&solution.choices),
+    }
+    budget.report(solution.objective, bound);
+    solution
+}
