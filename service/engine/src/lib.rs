@@ -1,1 +1,12 @@
+//! The model of Rimeshift and every answer that it gives.
+//!
+//! The engine takes plain data ([`day::DayParts`]), builds an immutable [`day::Day`] and answers
+//! questions about it. It reads no file, clock, environment or network; the same day, policy, seed
+//! and work budget give the same answer whatever the number of threads.
 
+pub mod answer;
+pub mod day;
+pub mod geometry;
+pub mod ids;
+pub mod search;
+pub mod units;
