@@ -4,9 +4,11 @@
 //! questions about it. It reads no file, clock, environment or network; the same day, policy, seed
 //! and work budget give the same answer whatever the number of threads.
 
+pub mod air;
 pub mod answer;
 pub mod day;
 pub mod geometry;
 pub mod ids;
+pub mod path;
 pub mod search;
 pub mod units;

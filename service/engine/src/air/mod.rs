@@ -1,0 +1,3 @@
+//! The air that aircraft fly in.
+
+pub mod isa;
