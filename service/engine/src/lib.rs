@@ -6,7 +6,10 @@
 
 pub mod air;
 pub mod answer;
+pub mod change;
 pub mod day;
+#[cfg(test)]
+mod fixture;
 pub mod geometry;
 pub mod ids;
 pub mod path;
