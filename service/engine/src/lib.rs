@@ -6,6 +6,7 @@
 
 pub mod air;
 pub mod answer;
+pub mod benefit;
 pub mod change;
 pub mod day;
 #[cfg(test)]
