@@ -13,6 +13,7 @@ pub mod day;
 mod fixture;
 pub mod geometry;
 pub mod ids;
+pub mod load;
 pub mod path;
 pub mod search;
 pub mod units;

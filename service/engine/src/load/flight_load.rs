@@ -1,0 +1,141 @@
+//! What one version of one flight adds to the load of the day.
+
+use super::index::SectorIndex;
+use super::piece::Piece;
+use crate::day::{Day, Flight, Policy};
+use crate::ids::{AirportId, SectorId};
+use crate::path::{Knot, Path};
+
+/// Intervals this little apart touch, and one this short is none: rounding of crossing times.
+const TOUCH_S: f64 = 1e-6;
+/// Level flight shorter than this does not end a climb or descent, seconds.
+const LEVEL_OFF_S: f64 = 1.0;
+
+/// A maximal interval `[in, out)` inside a sector.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Visit {
+    /// The sector, open or not.
+    pub sector: SectorId,
+    /// Entry, seconds of the day.
+    pub in_s: f64,
+    /// Exit, seconds of the day.
+    pub out_s: f64,
+}
+
+/// A climb or descent begun inside a sector.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct LevelChange {
+    /// The sector, open or not.
+    pub sector: SectorId,
+    /// When it begins, seconds of the day.
+    pub begin_s: f64,
+}
+
+/// What one version of a flight may be counted for.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct FlightLoad {
+    /// Visits by time of entry, then sector.
+    pub visits: Vec<Visit>,
+    /// Climbs and descents by time, then sector: one entry for each sector around their start.
+    pub level_changes: Vec<LevelChange>,
+    /// The counted airport where it lands, and when.
+    pub arrival: Option<(AirportId, f64)>,
+    /// The counted airport where it takes off, and when.
+    pub departure: Option<(AirportId, f64)>,
+}
+
+impl SectorIndex {
+    /// What a version of a flight may be counted for.
+    #[must_use]
+    pub fn flight_load(&self, path: &Path<'_>, flight: &Flight, day: &Day) -> FlightLoad {
+        FlightLoad {
+            visits: visits(self.inside(path), &day.policy),
+            level_changes: self.level_changes(path),
+            arrival: flight.arrives_at.map(|airport| (airport, path.end_s())),
+            departure: flight.departs_from.map(|airport| (airport, path.start_s())),
+        }
+    }
+
+    /// When a path is inside which sector, open or not: maximal intervals by sector, then time,
+    /// before any policy on short visits.
+    #[must_use]
+    pub fn inside(&self, path: &Path<'_>) -> Vec<Visit> {
+        let mut found = Vec::with_capacity(path.len() + 8);
+        let (mut near, mut cuts) = (Vec::new(), Vec::new());
+        let mut knots = path.knots_from(0);
+        let Some(mut from) = knots.next() else { return found };
+        for until in knots {
+            let piece = Piece::new(&from, &until);
+            for piece in [Some(piece), piece.turned()].into_iter().flatten() {
+                for ((sector, volume), cover) in self.near(&piece, &mut near) {
+                    piece.inside(volume, cover, &mut cuts, |in_s, out_s| {
+                        found.push(Visit { sector: *sector, in_s, out_s });
+                    });
+                }
+            }
+            from = until;
+        }
+        found.sort_unstable_by(by_sector);
+        join(&mut found, |gap_s| gap_s <= TOUCH_S);
+        found.retain(|visit| visit.out_s - visit.in_s > TOUCH_S);
+        found
+    }
+
+    fn level_changes(&self, path: &Path<'_>) -> Vec<LevelChange> {
+        let mut changes = Vec::new();
+        for start in climb_and_descent_starts(path) {
+            let sectors = self.sectors_at(start.lon_deg, start.lat_deg, start.level_ft);
+            changes.extend(
+                sectors.into_iter().map(|sector| LevelChange { sector, begin_s: start.time_s }),
+            );
+        }
+        changes
+    }
+}
+
+fn by_sector(a: &Visit, b: &Visit) -> std::cmp::Ordering {
+    a.sector.cmp(&b.sector).then(a.in_s.total_cmp(&b.in_s)).then(a.out_s.total_cmp(&b.out_s))
+}
+
+/// Joins intervals of one sector, sorted by it and time, whose gap is small enough.
+fn join(visits: &mut Vec<Visit>, is_small: impl Fn(f64) -> bool) {
+    visits.dedup_by(|next, kept| {
+        let one = next.sector == kept.sector && is_small(next.in_s - kept.out_s);
+        if one {
+            kept.out_s = kept.out_s.max(next.out_s);
+        }
+        one
+    });
+}
+
+/// Visits by time: intervals less than `rejoin_s` apart count as one, then those shorter than
+/// `min_visit_s` are dropped.
+fn visits(mut inside: Vec<Visit>, policy: &Policy) -> Vec<Visit> {
+    join(&mut inside, |gap_s| gap_s < policy.rejoin_s);
+    inside.retain(|visit| visit.out_s - visit.in_s >= policy.min_visit_s);
+    inside.sort_unstable_by(|a, b| a.in_s.total_cmp(&b.in_s).then(a.sector.cmp(&b.sector)));
+    inside.shrink_to_fit();
+    inside
+}
+
+/// Where each maximal climb or descent begins.
+fn climb_and_descent_starts(path: &Path<'_>) -> Vec<Knot> {
+    let mut starts = Vec::new();
+    // The direction of the climb or descent under way, and for how long it has been level.
+    let (mut rising, mut level_s) = (0.0, 0.0);
+    let mut knots = path.knots_from(0);
+    let Some(mut from) = knots.next() else { return starts };
+    for until in knots {
+        let step_ft = until.level_ft - from.level_ft;
+        if step_ft == 0.0 {
+            level_s += until.time_s - from.time_s;
+        } else {
+            if rising != step_ft.signum() || level_s >= LEVEL_OFF_S {
+                starts.push(from);
+            }
+            (rising, level_s) = (step_ft.signum(), 0.0);
+        }
+        from = until;
+    }
+    starts
+}
