@@ -160,7 +160,7 @@ pub enum Constraint {
         until_s: f64,
         /// Greatest count in the run with the change added.
         count: f64,
-        /// What was allowed there: the limit, or the filed count where that is larger.
+        /// The limit in force there. Where the filed count is larger, that was allowed.
         limit: f64,
     },
     /// A new loss.

@@ -12,7 +12,9 @@ use crate::units::{fl_to_ft, to_millisecond};
 pub struct Change {
     /// What differs from the filed flight.
     pub changed: Changed,
-    /// When each stretch begins and ends in the new profile.
+    /// The stretches, by their start.
+    pub stretches: Vec<Stretch>,
+    /// When each of them begins and ends in the new profile.
     pub times: Vec<StretchTimes>,
     /// The places where the new profile turns: start and end of each transition, its steps, and
     /// filed points between, with times in whole milliseconds.
@@ -37,6 +39,13 @@ impl Change {
     #[must_use]
     pub fn arrival_shift_s(&self) -> f64 {
         self.changed.shift_s
+    }
+
+    /// When one of its stretches begins and ends.
+    #[must_use]
+    pub fn times_of(&self, stretch: &Stretch) -> Option<StretchTimes> {
+        let position = self.stretches.iter().position(|s| s == stretch)?;
+        self.times.get(position).copied()
     }
 }
 
@@ -85,7 +94,7 @@ pub fn change_levels(
         times.planned_from_s = to_millisecond(times.planned_from_s);
         times.planned_until_s = to_millisecond(times.planned_until_s);
     }
-    Ok(Change { changed, times, marks })
+    Ok(Change { changed, stretches: stretches.to_vec(), times, marks })
 }
 
 /// Where a stretch begins.

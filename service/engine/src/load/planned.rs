@@ -1,6 +1,8 @@
 //! The counts of a planned day, and what one more change would break.
 
 use super::allowed::exceeds;
+use std::sync::Arc;
+
 use super::cells::{Cell, Counts};
 use super::day_loads::{DayLoads, Difference, Series};
 use super::runs::{Excess, merge_runs};
@@ -8,23 +10,24 @@ use crate::answer::{LoadMeasure, Overload};
 
 /// The filed counts with the differences of some changed flights added.
 #[derive(Debug, Clone)]
-pub struct PlannedLoads<'a> {
-    loads: &'a DayLoads,
+pub struct PlannedLoads {
+    loads: Arc<DayLoads>,
     /// What is added to the filed counts, by series.
     added: Vec<Counts<i32>>,
 }
 
-impl<'a> PlannedLoads<'a> {
+impl PlannedLoads {
     /// The filed day: nothing is changed yet.
     #[must_use]
-    pub fn new(loads: &'a DayLoads) -> Self {
-        Self { loads, added: vec![Counts::default(); loads.all_series().count()] }
+    pub fn new(loads: Arc<DayLoads>) -> Self {
+        let added = vec![Counts::default(); loads.all_series().count()];
+        Self { loads, added }
     }
 
     /// The filed day behind it.
     #[must_use]
-    pub fn loads(&self) -> &'a DayLoads {
-        self.loads
+    pub fn loads(&self) -> &DayLoads {
+        &self.loads
     }
 
     /// Adds the differences of a changed flight.
@@ -52,8 +55,8 @@ impl<'a> PlannedLoads<'a> {
     }
 
     /// What one more change would break: runs of windows or minutes to which it adds and whose
-    /// count would be more than is allowed, by place, measure and time. Its limit is what is
-    /// allowed there: the limit, or the filed count where that is larger.
+    /// count would be more than is allowed (the limit, or the filed count where that is larger), by
+    /// place, measure and time. The limit told is the one in force.
     #[must_use]
     pub fn violations(&self, differences: &[Difference]) -> Vec<Overload> {
         let mut found = Vec::new();
@@ -87,7 +90,7 @@ impl<'a> PlannedLoads<'a> {
 
 /// One more change, in one series.
 struct OneMore<'p> {
-    planned: &'p PlannedLoads<'p>,
+    planned: &'p PlannedLoads,
     series: &'p Series,
     number: u32,
     differences: &'p [Difference],
@@ -95,7 +98,7 @@ struct OneMore<'p> {
 
 impl<'p> OneMore<'p> {
     /// `differences`: at least one, all of one series, rising.
-    fn new(planned: &'p PlannedLoads<'p>, differences: &'p [Difference]) -> Self {
+    fn new(planned: &'p PlannedLoads, differences: &'p [Difference]) -> Self {
         let (cell, _) = differences[0];
         Self { planned, series: planned.loads.series(cell), number: cell.series, differences }
     }
@@ -115,9 +118,10 @@ impl<'p> OneMore<'p> {
 
     fn over_limit(&self, found: &mut Vec<Overload>) {
         let excesses = self.additions().filter_map(|cell| {
-            let limit = self.series.allowed(cell.index)?;
+            let (limit, most) =
+                (self.series.binding_limit(cell.index)?, self.series.allowed(cell.index)?);
             let count = self.count(cell.index);
-            exceeds(count, limit).then_some(Excess { cell, count, limit })
+            exceeds(count, most).then_some(Excess { cell, count, limit })
         });
         let what = (self.series.place, self.series.kind(), self.series.clock());
         merge_runs(self.planned.loads.times(), what, excesses, found);
@@ -126,8 +130,7 @@ impl<'p> OneMore<'p> {
     fn lasting(&self, found: &mut Vec<Overload>) {
         let lasting = &self.series.lasting;
         let excesses = self.lasting_rooms().filter_map(|(minute, room)| {
-            let (count, filed) = (self.count(minute), self.series.filed.at(minute));
-            let limit = lasting.allowed(minute, lasting.limit(minute)?, filed);
+            let (count, limit) = (self.count(minute), lasting.limit(minute)?);
             let cell = Cell { series: self.number, index: minute };
             exceeds(0.0, room).then_some(Excess { cell, count, limit })
         });

@@ -4,26 +4,12 @@ use std::ops::Range;
 
 use super::allowed::exceeds;
 use super::cells::{Cell, Clock};
-use super::day_loads::{DayLoads, Series};
+use super::day_loads::Series;
 use super::planned::PlannedLoads;
 use super::runs::{Excess, merge_runs};
 use crate::answer::{LoadCount, LoadMeasure, Overload};
 
-impl DayLoads {
-    /// The filed counts wherever there is traffic (`planned` equals `filed`).
-    #[must_use]
-    pub fn load_counts(&self) -> Vec<LoadCount> {
-        PlannedLoads::new(self).load_counts()
-    }
-
-    /// Where the filed counts are above their limits, one a run of windows or minutes.
-    #[must_use]
-    pub fn overloads(&self) -> Vec<Overload> {
-        PlannedLoads::new(self).overloads()
-    }
-}
-
-impl PlannedLoads<'_> {
+impl PlannedLoads {
     /// Filed and planned counts by place, measure and time, wherever either has traffic. An
     /// occupancy row has the greatest minute of the slice that starts where a window does, and the
     /// smallest limit in force in it.
