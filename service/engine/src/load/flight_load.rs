@@ -139,3 +139,61 @@ fn climb_and_descent_starts(path: &Path<'_>) -> Vec<Knot> {
     }
     starts
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::day::{Point, Profile};
+    use crate::path::Track;
+
+    fn visit(in_s: f64, out_s: f64) -> Visit {
+        Visit { sector: SectorId(0), in_s, out_s }
+    }
+
+    #[test]
+    fn visits_are_rejoined_first_and_dropped_after() {
+        let policy = Policy { rejoin_s: 30.0, min_visit_s: 60.0, ..Policy::default() };
+        let inside =
+            vec![visit(0.0, 40.0), visit(69.0, 90.0), visit(120.0, 179.0), visit(300.0, 360.0)];
+        // 29 s apart are rejoined, 30 s are not; 59 s are too short, 60 s are not.
+        assert_eq!(visits(inside, &policy), [visit(0.0, 90.0), visit(300.0, 360.0)]);
+    }
+
+    #[test]
+    fn without_such_a_policy_only_maximal_intervals_matter() {
+        let inside = vec![visit(0.0, 0.5), visit(0.6, 1.0)];
+        assert_eq!(visits(inside.clone(), &Policy::default()), inside);
+    }
+
+    /// When climbs and descents begin along levels given as (time, level).
+    fn starts_s(levels: &[(f64, f64)]) -> Vec<f64> {
+        let points = levels
+            .iter()
+            .map(|&(time_s, level_ft)| Point {
+                time_s,
+                lon_deg: time_s / 1e5,
+                lat_deg: 45.0,
+                level_ft,
+                fix: None,
+            })
+            .collect();
+        let track = Track::new(&Profile::new(points, 24_500.0).unwrap());
+        let starts = climb_and_descent_starts(&Path::filed(&track));
+        starts.iter().map(|knot| knot.time_s).collect()
+    }
+
+    #[test]
+    fn a_climb_goes_on_over_less_than_a_second_of_level_flight() {
+        let climb = [(0.0, 0.0), (60.0, 1000.0), (60.9, 1000.0), (120.0, 2000.0)];
+        assert_eq!(starts_s(&climb), [0.0]);
+        let steps = [(0.0, 0.0), (60.0, 1000.0), (61.0, 1000.0), (120.0, 2000.0)];
+        assert_eq!(starts_s(&steps), [0.0, 61.0]);
+    }
+
+    #[test]
+    fn a_descent_after_a_climb_is_another_change() {
+        let levels = [(0.0, 0.0), (60.0, 1000.0), (60.5, 1000.0), (120.0, 0.0), (130.0, 0.0)];
+        assert_eq!(starts_s(&levels), [0.0, 60.5]);
+        assert_eq!(starts_s(&[(0.0, 1000.0), (60.0, 1000.0)]), [] as [f64; 0]);
+    }
+}

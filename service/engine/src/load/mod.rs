@@ -42,6 +42,11 @@ mod planned;
 mod report;
 mod runs;
 
+#[cfg(test)]
+mod recount;
+#[cfg(test)]
+mod sampling;
+
 pub use cells::{Cell, Clock, Times};
 pub use day_loads::{DayLoads, Difference, Which};
 pub use flight_load::{FlightLoad, LevelChange, Visit};
