@@ -1,8 +1,8 @@
 //! The counts of a planned day, and what one more change would break.
 
-use super::allowed::exceeds;
 use std::sync::Arc;
 
+use super::allowed::exceeds;
 use super::cells::{Cell, Counts};
 use super::day_loads::{DayLoads, Difference, Series};
 use super::runs::{Excess, merge_runs};
