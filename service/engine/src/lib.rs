@@ -16,4 +16,5 @@ pub mod ids;
 pub mod load;
 pub mod path;
 pub mod search;
+pub mod separation;
 pub mod units;

@@ -5,4 +5,5 @@
 //! straight line in longitude and latitude for what lies inside a polygon.
 
 pub mod geodesic;
+pub mod motion;
 pub mod polygon;

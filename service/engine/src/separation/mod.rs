@@ -1,0 +1,30 @@
+//! Which flights come closer than their minima, and which of that is new in a changed day.
+//!
+//! Two flights lose separation while both exist at or above the separation floor, their horizontal
+//! distance is less than the larger of their horizontal minima (ICAO Doc 4444, 8.7.3: 5 NM) and
+//! their vertical distance less than the vertical one (Doc 4444, 5.3.2). Time is continuous: within
+//! two pieces the flights move along straight chords, the square of their distance is a quadratic of
+//! time and their difference in level is linear, so a loss lies between roots ([`pair_losses`]).
+//!
+//! To find the few pairs that matter among millions, flights are cut into slices of five minutes.
+//! Within a slice, boxes around what each flight does are sorted and swept; boxes that meet are
+//! compared as straight motions with a bound on how far the flights stray from them; what is left is
+//! solved exactly. Each filter keeps whatever could be a loss, by the bounds stated with it.
+
+mod index;
+mod known;
+mod minima;
+mod pair;
+mod scene;
+mod segment;
+#[cfg(test)]
+mod tests;
+mod versions;
+
+pub use known::{is_known, new_losses};
+pub use minima::{HorizontalMinimum, Minimum};
+pub use scene::{Scene, Version, pair_losses};
+pub use versions::{
+    VersionPair, VersionRef, clashes, losses_against_filed, losses_of_moved,
+    new_losses_against_filed,
+};
