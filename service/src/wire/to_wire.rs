@@ -1,0 +1,59 @@
+//! Summaries of a day to the wire.
+
+use rimeshift_engine::day::{Date, Day, Warning};
+use rimeshift_proto::v1;
+
+use super::{clock, policy};
+use crate::days::LoadedDay;
+
+/// Most warnings that an answer lists.
+const MOST_WARNINGS: usize = 1000;
+
+/// A day's summary.
+pub(crate) fn day(loaded: &LoadedDay) -> v1::Day {
+    let day = &loaded.day;
+    v1::Day {
+        name: loaded.name.to_string(),
+        date: Some(date(day.date)),
+        region: day.region.clone(),
+        day_sha256: loaded.sha256.clone(),
+        load_time: Some(clock::system_time(loaded.loaded)),
+        counts: Some(counts(day)),
+        policy: policy::settings(&day.policy),
+        snapped_levels: day.snapped_levels,
+    }
+}
+
+/// The warnings listed, and how many there are.
+pub(crate) fn warnings(warnings: Vec<Warning>) -> (Vec<v1::Warning>, u32) {
+    let all = count(warnings.len());
+    let listed = warnings
+        .into_iter()
+        .take(MOST_WARNINGS)
+        .map(|w| v1::Warning { path: w.path, message: w.message })
+        .collect();
+    (listed, all)
+}
+
+/// A number of rows; more than the wire can say become its most.
+pub(crate) fn count(n: usize) -> u32 {
+    u32::try_from(n).unwrap_or(u32::MAX)
+}
+
+fn date(date: Date) -> v1::Date {
+    v1::Date { year: date.year, month: i32::from(date.month), day: i32::from(date.day) }
+}
+
+fn counts(day: &Day) -> v1::DayCounts {
+    v1::DayCounts {
+        sectors: count(day.sectors.len()),
+        capacities: count(day.sectors.iter().map(|s| s.open.len()).sum()),
+        airports: count(day.airports.len()),
+        airport_capacities: count(day.airports.iter().map(|a| a.periods.len()).sum()),
+        aircraft: count(day.classes.len()),
+        fuel: count(day.fuel.iter().map(|table| table.rows.len()).sum()),
+        flights: count(day.flights.len()),
+        points: count(day.flights.iter().map(|f| f.profile.points().len()).sum()),
+        proposals: count(day.proposals.len()),
+    }
+}
