@@ -47,12 +47,14 @@ pub fn model_of(instance: &Instance) -> Model {
     let clash = |a: Option<Choice>, b| Some(Clash { a: a?, b: b?, cost: Cost::Hard });
     let of = |option: u32| choice_of[option as usize];
     let among = instance.edges.iter().map(|&(a, b)| clash(of(a), of(b)));
-    let filed = instance.edges_filed.iter().map(|&(a, flight)| clash(of(a), Some(choice(flight, 0))));
+    let filed =
+        instance.edges_filed.iter().map(|&(a, flight)| clash(of(a), Some(choice(flight, 0))));
     let clashes = among.chain(filed).flatten();
     let clashes = clashes.filter(|clash| clash.a.group != clash.b.group).collect();
     let terms = |row: &InstanceRow| {
         row.coef.iter().filter_map(|&(option, delta)| Some((of(option)?, delta))).collect()
     };
-    let rows = instance.rows.iter().map(|row| Row { slack: row.slack, terms: terms(row) }).collect();
+    let rows =
+        instance.rows.iter().map(|row| Row { slack: row.slack, terms: terms(row) }).collect();
     Model { groups, clashes, rows, any_ofs: Vec::new() }
 }

@@ -77,7 +77,8 @@ fn run(file: &Path, args: &Args) -> Result<(), Failure> {
             }
         };
         let watch = Watch { stop: &stop, progress: &progress };
-        let found = solve(&model, &options, watch).map_err(|defect| format!("{}: {defect}", file.display()))?;
+        let found = solve(&model, &options, watch)
+            .map_err(|defect| format!("{}: {defect}", file.display()))?;
         shortest_s = shortest_s.min(start.elapsed().as_secs_f64());
         solution = Some(found);
     }

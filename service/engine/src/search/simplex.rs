@@ -121,8 +121,6 @@ impl<'i> Simplex<'i> {
         }
         let mut cost: Vec<f64> = lp.cost.iter().map(|cost| cost / unit).collect();
         cost.resize(width + height, 0.0);
-        let mut lower = vec![0.0; width + height];
-        lower.fill(0.0);
         let unit_columns: Vec<Vec<(u32, f64)>> =
             (0..height as u32).map(|row| vec![(row, 1.0)]).collect();
         let mut simplex = Self {
@@ -136,7 +134,7 @@ impl<'i> Simplex<'i> {
             unit,
             reduced: cost.clone(),
             cost,
-            lower,
+            lower: vec![0.0; width + height],
             upper: vec![f64::INFINITY; width + height],
             basic: (width as u32..(width + height) as u32).collect(),
             slot_of: vec![NONE; width + height],
@@ -160,11 +158,8 @@ impl<'i> Simplex<'i> {
         simplex
     }
 
+    /// Columns that are no slacks.
     fn width(&self) -> usize {
-        self.column_of_count()
-    }
-
-    fn column_of_count(&self) -> usize {
         self.columns.starts.len() - 1
     }
 
@@ -247,8 +242,8 @@ impl<'i> Simplex<'i> {
                 self.columns.list(column).iter().map(|&(row, by)| y[row as usize] * by).sum();
             self.reduced[column] = self.cost[column] - paid;
         }
-        for row in 0..y.len() {
-            self.reduced[width + row] = -y[row];
+        for (reduced, y) in self.reduced[width..].iter_mut().zip(&y) {
+            *reduced = -y;
         }
         for &column in &self.basic {
             self.reduced[column as usize] = 0.0;
@@ -373,8 +368,7 @@ impl<'i> Simplex<'i> {
         let sign = if above { 1.0 } else { -1.0 };
         self.price_row(slot);
         let slope = (self.x_basic[slot] - goal).abs();
-        budget
-            .spend(self.work.touched.len() + 4 * self.factor.entries() / 2 + 4 * self.right.len());
+        budget.spend(self.work.touched.len() + 2 * self.factor.entries() + 4 * self.right.len());
         let Some((entering, flips)) = self.ratio_test(sign, slope) else {
             let ray = self.work.rho.iter().take(self.priced_rows).map(|rho| -sign * rho).collect();
             self.ray = Some(ray);

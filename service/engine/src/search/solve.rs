@@ -161,11 +161,8 @@ pub fn solve(model: &Model, options: &SolveOptions, watch: Watch<'_>) -> Result<
     let first: Vec<u32> = first.into_iter().map(|var| live.stand_in(var)).collect();
     let (chosen, bound, row_prices) = solve_split(&index, &cut, &first, aim, &mut budget);
     let mut best = State::of_vars(&index, chosen);
-    if let Some(start) = start {
-        if (start.is_feasible(), start.objective()) > (best.is_feasible(), best.objective()) {
-            best = start;
-        }
-    }
+    let rank = |state: &State<'_>| (state.is_feasible(), state.objective());
+    best = start.filter(|start| rank(start) > rank(&best)).unwrap_or(best);
     if best.is_feasible() {
         improve::polish(&mut best, &mut budget);
     }

@@ -1,8 +1,6 @@
 //! What is left after presolving falls into parts with no constraint between them. Each is cut out
 //! as an index of its own and solved on its own.
 
-use std::collections::BTreeMap;
-
 use petgraph::unionfind::UnionFind;
 
 use super::index::{Index, Lists};
@@ -165,37 +163,16 @@ fn cut_out(index: &Index, live: &Live, groups: &[u32], seam: &Seam) -> Part {
         first.push(vars.len() as u32);
     }
     let local = |var: u32| vars.binary_search(&var).ok().map(|var| var as u32);
-    let settled = |var: u32| {
-        live.vars[var as usize] && live.count[index.group_of[var as usize] as usize] == 1
-    };
-    let mut hard = Vec::new();
-    let mut soft = Vec::new();
-    let mut value = Vec::new();
-    for (here, &var) in (0u32..).zip(&vars) {
-        hard.extend(index.hard[var].iter().filter_map(|&other| Some((here, local(other)?))));
-        soft.extend(
-            index.soft[var].iter().filter_map(|&(other, cost)| Some((here, (local(other)?, cost)))),
-        );
-        let paid = index.soft[var].iter().filter(|&&(other, _)| settled(other));
-        value.push(index.value[var as usize] - paid.map(|&(_, cost)| cost).sum::<i64>());
-    }
-    let cut = |row: u32| cut_row(index, live, row, &local);
-    let mut firm = BTreeMap::new();
-    for &row in seam.rows.iter().filter(|&&row| live.rows[row as usize] == Demand::Firm) {
-        let (terms, slack) = cut(row);
-        let tightest = firm.entry(terms).or_insert((slack, row));
-        *tightest = (*tightest).min((slack, row));
-    }
-    let firm_rows = firm.len() as u32;
-    let mut rows: Vec<(u32, i64, Vec<(u32, i64)>)> =
-        firm.into_iter().map(|(terms, (slack, row))| (row, slack, terms)).collect();
-    rows.sort_unstable_by_key(|&(row, ..)| row);
-    let loose = seam.rows.iter().filter(|&&row| live.rows[row as usize] == Demand::Alternative);
-    let loose: Vec<u32> = loose.copied().collect();
-    rows.extend(loose.iter().map(|&row| {
-        let (terms, slack) = cut(row);
-        (row, slack, terms)
-    }));
+    let pairs = cut_pairs(index, live, &vars, &local);
+    let mut rows = cut_firm_rows(index, live, seam, &local);
+    let firm_rows = rows.len() as u32;
+    let loose: Vec<u32> = seam
+        .rows
+        .iter()
+        .copied()
+        .filter(|&row| live.rows[row as usize] == Demand::Alternative)
+        .collect();
+    rows.extend(loose.iter().map(|&row| CutRow::new(index, live, row, &local)));
     let loose_row = |row: &u32| loose.binary_search(row).ok().map(|row| row as u32 + firm_rows);
     let any_of_rows: Vec<(u32, u32)> = (0u32..)
         .zip(&seam.any_ofs)
@@ -207,44 +184,93 @@ fn cut_out(index: &Index, live: &Live, groups: &[u32], seam: &Seam) -> Part {
         any_of_rows.iter().map(|&(any_of, row)| (row, any_of)).collect();
     let by_row: Vec<_> = (0u32..)
         .zip(&rows)
-        .flat_map(|(row, (_, _, terms))| terms.iter().map(move |&term| (row, term)))
+        .flat_map(|(here, row)| row.terms.iter().map(move |&term| (here, term)))
         .collect();
     let by_var: Vec<_> = by_row.iter().map(|&(row, (var, delta))| (var, (row, delta))).collect();
     let index = Index {
         first,
         group_of,
+        value: pairs.value,
         allowed: vec![true; vars.len()],
-        hard: Lists::collect(vars.len(), &hard),
-        soft: Lists::collect(vars.len(), &soft),
-        slack: rows.iter().map(|&(_, slack, _)| slack).collect(),
+        hard: Lists::collect(vars.len(), &pairs.hard),
+        soft: Lists::collect(vars.len(), &pairs.soft),
+        slack: rows.iter().map(|row| row.slack).collect(),
         firm_rows,
         row_terms: Lists::collect(rows.len(), &by_row),
         var_terms: Lists::collect(vars.len(), &by_var),
         any_of_rows: Lists::collect(seam.any_ofs.len(), &any_of_rows),
         row_any_ofs: Lists::collect(rows.len(), &row_any_ofs),
-        value,
     };
-    Part { index, vars, rows: rows.into_iter().map(|(row, ..)| row).collect() }
+    Part { index, vars, rows: rows.into_iter().map(|row| row.source).collect() }
 }
 
-/// The terms of a row that are left, and its slack less what is settled or the same whatever is
-/// chosen. A slack may turn negative. A firm row is never dropped for having no terms left:
-/// presolve keeps only rows that can still be broken, so there are some.
-fn cut_row(
+/// Clashes within a part, and values less the costs of clashes with what is settled.
+#[derive(Default)]
+struct Pairs {
+    hard: Vec<(u32, u32)>,
+    soft: Vec<(u32, (u32, i64))>,
+    value: Vec<i64>,
+}
+
+fn cut_pairs(
     index: &Index,
     live: &Live,
-    row: u32,
+    vars: &[u32],
     local: &impl Fn(u32) -> Option<u32>,
-) -> (Vec<(u32, i64)>, i64) {
-    let mut slack = index.slack[row as usize];
-    let mut terms = Vec::new();
-    for run in by_group(index, &index.row_terms[row]) {
-        let (least, greatest) = live.range(index, run);
-        if least == greatest {
-            slack -= least;
-        } else {
-            terms.extend(run.iter().filter_map(|&(var, delta)| Some((local(var)?, delta))));
-        }
+) -> Pairs {
+    let settled = |var: u32| {
+        live.vars[var as usize] && live.count[index.group_of[var as usize] as usize] == 1
+    };
+    let mut pairs = Pairs::default();
+    for (here, &var) in (0u32..).zip(vars) {
+        let hard = index.hard[var].iter().filter_map(|&other| Some((here, local(other)?)));
+        pairs.hard.extend(hard);
+        let soft = index.soft[var].iter();
+        pairs.soft.extend(soft.filter_map(|&(other, cost)| Some((here, (local(other)?, cost)))));
+        let paid = index.soft[var].iter().filter(|&&(other, _)| settled(other));
+        let paid: i64 = paid.map(|&(_, cost)| cost).sum();
+        pairs.value.push(index.value[var as usize] - paid);
     }
-    (terms, slack)
+    pairs
+}
+
+/// Firm rows; of those with the same terms only the tightest.
+fn cut_firm_rows(
+    index: &Index,
+    live: &Live,
+    seam: &Seam,
+    local: &impl Fn(u32) -> Option<u32>,
+) -> Vec<CutRow> {
+    let firm = seam.rows.iter().filter(|&&row| live.rows[row as usize] == Demand::Firm);
+    let mut rows: Vec<CutRow> = firm.map(|&row| CutRow::new(index, live, row, local)).collect();
+    rows.sort_unstable_by(|a, b| (&a.terms, a.slack, a.source).cmp(&(&b.terms, b.slack, b.source)));
+    rows.dedup_by(|a, kept| a.terms == kept.terms);
+    rows.sort_unstable_by_key(|row| row.source);
+    rows
+}
+
+/// What is left of a row.
+struct CutRow {
+    source: u32,
+    slack: i64,
+    terms: Vec<(u32, i64)>,
+}
+
+impl CutRow {
+    /// The terms that are left, and the slack less what is settled or the same whatever is chosen.
+    /// A slack may turn negative. A firm row is never dropped for having no terms left: presolve
+    /// keeps only rows that can still be broken, so there are some.
+    fn new(index: &Index, live: &Live, row: u32, local: &impl Fn(u32) -> Option<u32>) -> Self {
+        let mut slack = index.slack[row as usize];
+        let mut terms = Vec::new();
+        for run in by_group(index, &index.row_terms[row]) {
+            let (least, greatest) = live.range(index, run);
+            if least == greatest {
+                slack -= least;
+            } else {
+                terms.extend(run.iter().filter_map(|&(var, delta)| Some((local(var)?, delta))));
+            }
+        }
+        Self { source: row, slack, terms }
+    }
 }
