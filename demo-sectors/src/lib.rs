@@ -19,10 +19,11 @@
 //!
 //! Speeds, rates and fuel figures are rules of thumb for still standard air, made for
 //! plausibility. The modules without invented names ([`atmosphere`], [`levels`], [`route`],
-//! [`profile`], [`flight`], [`ice`], [`proposals`], [`tally`], [`tables`]) also serve the converter
+//! [`profile`], [`fleet`], [`flight`], [`ice`], [`proposals`], [`tally`], [`tables`]) also serve the converter
 //! of real timetables in the `tests` crate.
 
 pub mod atmosphere;
+pub mod fleet;
 pub mod flight;
 pub mod ice;
 pub mod levels;

@@ -5,11 +5,11 @@ use std::{fs, path::Path, process::ExitCode};
 
 use rand_pcg::Pcg64;
 use rimeshift_demo_sectors::{
+    fleet,
     ice::IceRegion,
     limits, region, requests,
     tables::{self, Clock, Table},
-    tally,
-    traffic::{self, CLASSES},
+    tally, traffic,
 };
 
 /// The date, a weekday far from any real one.
@@ -50,15 +50,17 @@ fn write_day(folder: &Path) -> Result<(), String> {
     let rng = |stream: u64| Pcg64::new(u128::from(SEED), u128::from(stream));
     let airports = region::airports();
     let fixes = region::fixes(&mut rng(1));
-    let flights = traffic::invent(&mut rng(2), &airports, &region::gates(), &fixes);
-    let sectors = region::sectors();
-    let tallies = tally::count(&flights, sectors.len(), |lon, lat, fl, here| {
-        here.extend((0..sectors.len()).filter(|i| sectors[*i].contains(lon, lat, fl)));
-    });
     let mut ice_rng = rng(3);
     let ice: Vec<IceRegion> = (0..ICE_REGIONS)
         .map(|_| IceRegion::invent(&mut ice_rng, &region::EXTENT, (330.0, 380.0)))
         .collect();
+    let mut flights = traffic::invent(&mut rng(2), &airports, &region::gates(), &fixes);
+    requests::arrive_at_edges(&mut flights, &ice, 16);
+    traffic::order_and_name(&mut flights);
+    let sectors = region::sectors();
+    let tallies = tally::count(&flights, sectors.len(), |lon, lat, fl, here| {
+        here.extend((0..sectors.len()).filter(|i| sectors[*i].contains(lon, lat, fl)));
+    });
     let proposals = requests::invent(&mut rng(4), &flights, &ice, &sectors);
 
     let clock = Clock::of(DATE)?;
@@ -72,44 +74,17 @@ fn write_day(folder: &Path) -> Result<(), String> {
         fs::write(&path, content).map_err(|e| format!("{}: {e}", path.display()))
     };
     text("day.toml", DAY_TOML.to_owned())?;
-    text("sectors.geojson", pretty(&region::sectors_geojson(&sectors)))?;
-    text("restrictions.geojson", pretty(&restrictions))?;
+    text("sectors.geojson", tables::geojson_text(&region::sectors_geojson(&sectors)))?;
+    text("restrictions.geojson", tables::geojson_text(&restrictions))?;
     let capacity = limits::capacity_rows(&sectors, &tallies);
     tables::capacity(&capacity, clock)?.write(&folder.join("capacity.csv"))?;
     airport_table.write(&folder.join("airports.csv"))?;
     airport_capacity.write(&folder.join("airport_capacity.csv"))?;
     tables::flights(&flights).write(&folder.join("flights.csv"))?;
     tables::points(&flights, clock)?.write(&folder.join("points.csv"))?;
-    aircraft().write(&folder.join("aircraft.csv"))?;
+    fleet::aircraft_table().write(&folder.join("aircraft.csv"))?;
     fuel().write(&folder.join("fuel.csv"))?;
     tables::proposals(&proposals, &flights, clock)?.write(&folder.join("proposals.csv"))
-}
-
-/// GeoJSON with one feature a line.
-fn pretty(collection: &serde_json::Value) -> String {
-    let features = collection["features"].as_array().map_or(&[][..], Vec::as_slice);
-    let lines: Vec<String> = features.iter().map(ToString::to_string).collect();
-    format!("{{\"type\":\"FeatureCollection\",\"features\":[\n{}\n]}}\n", lines.join(",\n"))
-}
-
-fn aircraft() -> Table {
-    let mut table = Table::with_columns(&[
-        "aircraft",
-        "ceiling_fl",
-        "climb_fpm",
-        "descent_fpm",
-        "contrail_factor",
-    ]);
-    for c in CLASSES {
-        table.push(vec![
-            c.aircraft.to_owned(),
-            c.ceiling_fl.to_string(),
-            c.rates_fpm.0.to_string(),
-            c.rates_fpm.1.to_string(),
-            c.contrail_factor.to_string(),
-        ]);
-    }
-    table
 }
 
 /// Cruise fuel of the medium jet by the minute and of the heavy jet by mass.

@@ -190,6 +190,7 @@ pub fn options(
         (0.0, 0.0, [-1, 1, -2, 2].as_slice()),
         (0.0, third_s, &[-1, 1, -2]),
         (third_s, 0.0, &[-1, 1, -2]),
+        (third_s / 2.0, third_s / 2.0, &[-1, 1, -2]),
     ];
     for (cut_from_s, cut_until_s, steps) in parts {
         let part = Crossing {

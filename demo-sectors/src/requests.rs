@@ -30,6 +30,8 @@ pub fn invent(
     proposals.extend(in_two_steps(flights, &mut used));
     let mut order: Vec<usize> = (0..flights.len()).filter(|i| !used[*i]).collect();
     order.shuffle(rng);
+    // Stable: those that arrive at the edge of a window first, else in drawn order.
+    order.sort_by_key(|i| !arrives_at_edge(&flights[*i]));
     for index in order {
         if proposals.len() >= WANTED {
             break;
@@ -43,6 +45,50 @@ pub fn invent(
     // Stable: proposals of one flight stay in the order made.
     proposals.sort_by_key(|p| p.flight);
     proposals
+}
+
+/// Airports whose arrivals come close to their limit.
+const BUSY: [&str; 2] = ["XKEL", "XVAR"];
+/// Start of each window of arrivals, seconds after the last.
+const STEP_S: f64 = 1200.0;
+/// How close to a window's edge counts, seconds.
+const EDGE_S: f64 = 4.0;
+
+fn arrives_at_edge(flight: &Flight) -> bool {
+    let after_s = flight.end_s().rem_euclid(STEP_S);
+    BUSY.contains(&flight.destination.as_str()) && after_s.min(STEP_S - after_s) <= EDGE_S
+}
+
+/// Moves some flights to busy airports in time so that the change that they will ask for would
+/// bring them over the edge of a window: the gain or loss of a level change is a few seconds, so
+/// that by chance hardly any would.
+pub fn arrive_at_edges(flights: &mut [Flight], ice: &[IceRegion], wanted: usize) {
+    let mut moved = 0;
+    for flight in flights.iter_mut() {
+        let hour = flight.end_s() / 3600.0;
+        let in_wave = (7.0..10.5).contains(&hour) || (16.5..20.0).contains(&hour);
+        if moved == wanted || !in_wave || !BUSY.contains(&flight.destination.as_str()) {
+            continue;
+        }
+        let Some(crossing) = proposals::crossings(flight, ice, 600.0).into_iter().next() else {
+            continue;
+        };
+        // Above the tropopause (FL 361) speed does not change with level.
+        let asked = proposals::options(flight, ice, &crossing, 1);
+        let Some(stretch) = asked.first().and_then(|a| a.stretches.first()) else { continue };
+        let filed_fl = crossing.run.level_fl;
+        if filed_fl > 360 || !flight.movable {
+            continue;
+        }
+        // A lower level is faster: from just after an edge to before it. A higher one is slower.
+        let aim_s = if stretch.level_fl < filed_fl { EDGE_S - 1.0 } else { 1.0 - EDGE_S };
+        let edge_s = (flight.end_s() / STEP_S).round() * STEP_S;
+        let shift_s = edge_s + aim_s - flight.end_s();
+        for point in &mut flight.points {
+            point.time_s += shift_s;
+        }
+        moved += 1;
+    }
 }
 
 /// What one flight asks for: one proposal for all its crossings or one each; now and then the

@@ -57,6 +57,12 @@ impl Clock {
         Ok(Self { midnight })
     }
 
+    /// 00:00 of the date in seconds since 1970.
+    #[must_use]
+    pub fn midnight_s(&self) -> i64 {
+        self.midnight.as_second()
+    }
+
     /// A time in UTC, whole seconds.
     ///
     /// # Errors
@@ -263,4 +269,12 @@ pub fn proposals(
         }
     }
     Ok(table)
+}
+
+/// GeoJSON with one feature a line.
+#[must_use]
+pub fn geojson_text(collection: &serde_json::Value) -> String {
+    let features = collection["features"].as_array().map_or(&[][..], Vec::as_slice);
+    let lines: Vec<String> = features.iter().map(ToString::to_string).collect();
+    format!("{{\"type\":\"FeatureCollection\",\"features\":[\n{}\n]}}\n", lines.join(",\n"))
 }

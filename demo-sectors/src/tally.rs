@@ -8,7 +8,7 @@ const SAMPLE_S: f64 = 20.0;
 /// Minutes before 00:00 that are counted.
 pub const LEAD_MIN: usize = 360;
 /// Minutes counted in all.
-pub const SPAN_MIN: usize = LEAD_MIN + 1440 + 720;
+pub const SPAN_MIN: usize = LEAD_MIN + 1440 + 1080;
 /// Minutes between the starts of entry windows.
 pub const STEP_MIN: usize = 20;
 
@@ -117,14 +117,19 @@ pub fn quantile(counts: &[u32], share: f64) -> u32 {
     sorted.get(rank.max(1) - 1).copied().unwrap_or(0)
 }
 
+/// Adds one at the minute of a time, if it is counted.
+pub fn add_at(per_minute: &mut [u32], time_s: f64) {
+    if let Some(count) = minute_of(time_s).and_then(|minute| per_minute.get_mut(minute)) {
+        *count += 1;
+    }
+}
+
 /// Arrivals of each minute at an airport.
 #[must_use]
 pub fn arrivals(flights: &[Flight], airport: &str) -> Vec<u32> {
     let mut per_minute = vec![0; SPAN_MIN];
     for flight in flights.iter().filter(|f| f.destination == airport) {
-        if let Some(minute) = minute_of(flight.end_s()) {
-            per_minute[minute] += 1;
-        }
+        add_at(&mut per_minute, flight.end_s());
     }
     per_minute
 }
@@ -134,9 +139,7 @@ pub fn arrivals(flights: &[Flight], airport: &str) -> Vec<u32> {
 pub fn departures(flights: &[Flight], airport: &str) -> Vec<u32> {
     let mut per_minute = vec![0; SPAN_MIN];
     for flight in flights.iter().filter(|f| f.departure == airport) {
-        if let Some(minute) = minute_of(flight.start_s()) {
-            per_minute[minute] += 1;
-        }
+        add_at(&mut per_minute, flight.start_s());
     }
     per_minute
 }
