@@ -1,1 +1,6 @@
+//! The Rimeshift command line.
+
+mod day_folder;
+mod tables;
+
 fn main() {}
