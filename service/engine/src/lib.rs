@@ -6,8 +6,10 @@
 
 pub mod air;
 pub mod answer;
+pub mod ask;
 pub mod benefit;
 pub mod change;
+pub mod check;
 pub mod day;
 #[cfg(test)]
 mod fixture;
@@ -15,6 +17,8 @@ pub mod geometry;
 pub mod ids;
 pub mod load;
 pub mod path;
+pub mod plan;
 pub mod search;
 pub mod separation;
+pub mod traffic;
 pub mod units;

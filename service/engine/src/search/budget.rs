@@ -56,6 +56,19 @@ impl<'a> Budget<'a> {
         Self { watch, limit, used: 0, next_look: LOOK_EVERY, told_to_stop }
     }
 
+    /// A budget of its own that listens to the same caller.
+    pub(super) fn share(&self, limit: u64) -> Self {
+        let mut share = Self::new(limit, self.watch);
+        share.told_to_stop |= self.told_to_stop;
+        share
+    }
+
+    /// Adds the work that a share did.
+    pub(super) fn absorb(&mut self, share: &Self) {
+        self.used = self.used.saturating_add(share.used);
+        self.told_to_stop |= share.told_to_stop;
+    }
+
     /// Counts work; false once the search should end.
     pub(super) fn spend(&mut self, units: usize) -> bool {
         self.used = self.used.saturating_add(units as u64);
@@ -76,6 +89,10 @@ impl<'a> Budget<'a> {
 
     pub(super) fn used(&self) -> u64 {
         self.used
+    }
+
+    pub(super) fn left(&self) -> u64 {
+        self.limit.saturating_sub(self.used)
     }
 
     pub(super) fn report(&self, objective: i64, bound: i64) {

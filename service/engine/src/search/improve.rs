@@ -5,6 +5,15 @@
 use super::budget::Budget;
 use super::state::{Blocker, State};
 
+/// All small changes for the better, if the state is feasible; it is maximal then.
+pub(super) fn climb(state: &mut State<'_>, budget: &mut Budget<'_>) {
+    if state.is_feasible() {
+        polish(state, budget);
+        exchange_all(state, budget);
+        polish(state, budget);
+    }
+}
+
 /// Makes single switches that gain and break nothing until there is none: the state is then
 /// *maximal*. Not limited by the budget, as every answer promises to be maximal; each switch gains
 /// at least 1 and passes are few.
@@ -37,7 +46,7 @@ fn switch_to_best(state: &mut State<'_>, group: u32, budget: &mut Budget<'_>) ->
 
 /// Tries an exchange for every candidate that would gain but is blocked, until none is left that
 /// helps. The state must be feasible and stays so.
-pub(super) fn exchange_all(state: &mut State<'_>, budget: &mut Budget<'_>) {
+fn exchange_all(state: &mut State<'_>, budget: &mut Budget<'_>) {
     loop {
         let mut changed = false;
         for group in 0..state.index.groups() {

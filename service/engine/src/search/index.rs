@@ -33,6 +33,11 @@ impl<T: Copy> Lists<T> {
     pub(super) fn len(&self) -> usize {
         self.starts.len() - 1
     }
+
+    /// Items of all lists together.
+    pub(super) fn items_len(&self) -> usize {
+        self.items.len()
+    }
 }
 
 impl<T> std::ops::Index<u32> for Lists<T> {

@@ -16,14 +16,22 @@
 
 mod budget;
 pub mod check;
+mod exact;
+mod factor;
 mod greedy;
 mod improve;
 mod index;
 pub mod model;
 #[cfg(test)]
 mod oracle;
+mod part;
+mod presolve;
+mod prices;
 mod ranking;
+mod relaxation;
+mod simplex;
 mod solve;
+mod split;
 mod state;
 
 pub use budget::{Progress, Watch};

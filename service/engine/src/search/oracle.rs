@@ -113,7 +113,9 @@ fn check(model: &Model, best: Option<i64>, solution: &Solution) {
     assert_eq!(solution.violations, model.violations(&solution.choices));
     if solution.violations.is_empty() {
         assert_eq!(solution.objective, model.objective(&solution.choices));
-        assert!(solution.bound >= best);
+        assert!(solution.bound >= best, "bound {:?} {best:?}", solution.bound);
+        assert_eq!(Some(solution.objective), best);
+        assert_eq!(solution.stopped, Stopped::Optimal);
         assert!(is_maximal(model, &solution.choices));
     }
 }

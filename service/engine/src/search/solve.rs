@@ -6,6 +6,9 @@ use super::greedy;
 use super::improve;
 use super::index::Index;
 use super::model::{Choice, Defect, Model};
+use super::part::{Aim, solve_split};
+use super::presolve::{Demand, Live, presolve};
+use super::split::{Split, split};
 use super::state::State;
 
 /// How to search.
@@ -68,6 +71,31 @@ pub struct Presolved {
     pub largest_component: usize,
 }
 
+impl Presolved {
+    fn of(index: &Index, live: &Live, cut: Option<&Split>) -> Self {
+        let kept = |row: &&Demand| matches!(row, Demand::Firm | Demand::Alternative);
+        let firm = index.firm_rows as usize;
+        let open_any_ofs = live.any_ofs.iter().filter(|&&open| open).count();
+        let parts = cut.map_or(&[][..], |cut| &cut.parts);
+        Self {
+            groups: live.count.len(),
+            groups_settled: live.count.iter().filter(|&&count| count <= 1).count(),
+            candidates: live.vars.len(),
+            candidates_ruled_out: live.vars.iter().filter(|&&left| !left).count(),
+            rows: firm,
+            rows_dropped: firm - live.rows.iter().take(firm).filter(kept).count(),
+            any_ofs: live.any_ofs.len(),
+            any_ofs_dropped: live.any_ofs.len() - open_any_ofs,
+            components: parts.len(),
+            largest_component: parts
+                .iter()
+                .map(|part| part.index.groups() as usize)
+                .max()
+                .unwrap_or(0),
+        }
+    }
+}
+
 /// An answer.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Solution {
@@ -110,18 +138,35 @@ impl Solution {
 pub fn solve(model: &Model, options: &SolveOptions, watch: Watch<'_>) -> Result<Solution, Defect> {
     let index = Index::new(model)?;
     let mut budget = Budget::new(options.work, watch);
+    let live = presolve(&index, &mut budget);
     let start = options.start.as_ref().filter(|start| index.fits(start));
-    let mut best = State::of_vars(&index, rest(&index));
-    greedy::fill(&mut best, &mut budget);
-    climb(&mut best, &mut budget);
-    if let Some(mut other) = start.and_then(|start| State::new(&index, start)) {
-        greedy::fill(&mut other, &mut budget);
-        climb(&mut other, &mut budget);
-        if (other.is_feasible(), other.objective()) > (best.is_feasible(), best.objective()) {
-            best = other;
-        }
+    let start = start.and_then(|start| State::new(&index, start));
+    let first = start.as_ref().map_or_else(|| rest(&index), |state| state.chosen.clone());
+    if live.infeasible {
+        let mut state = State::of_vars(&index, first);
+        greedy::repair(&mut state, &mut budget);
+        return Ok(answer(
+            model,
+            &state,
+            i64::MIN,
+            Presolved::of(&index, &live, None),
+            vec![],
+            &budget,
+            options,
+        ));
     }
-    Ok(answer(model, &best, &budget, options))
+    let cut = split(&index, &live);
+    let presolved = Presolved::of(&index, &live, Some(&cut));
+    let aim = Aim { gap: options.gap };
+    let first: Vec<u32> = first.into_iter().map(|var| live.stand_in(var)).collect();
+    let (chosen, bound, row_prices) = solve_split(&index, &cut, &first, aim, &mut budget);
+    let mut best = State::of_vars(&index, chosen);
+    let rank = |state: &State<'_>| (state.is_feasible(), state.objective());
+    best = start.filter(|start| rank(start) > rank(&best)).unwrap_or(best);
+    if best.is_feasible() {
+        improve::polish(&mut best, &mut budget);
+    }
+    Ok(answer(model, &best, bound, presolved, row_prices, &budget, options))
 }
 
 /// Searches for the best choices among those that contain `forced`, starting from the choices of
@@ -154,46 +199,37 @@ fn rest(index: &Index) -> Vec<u32> {
     (0..index.groups()).map(first).collect()
 }
 
-fn climb(state: &mut State<'_>, budget: &mut Budget<'_>) {
-    if state.is_feasible() {
-        improve::polish(state, budget);
-        improve::exchange_all(state, budget);
-        improve::polish(state, budget);
-    }
-}
-
 fn answer(
     model: &Model,
     best: &State<'_>,
+    bound: i64,
+    presolved: Presolved,
+    mut row_prices: Vec<f64>,
     budget: &Budget<'_>,
     options: &SolveOptions,
 ) -> Solution {
-    let index = best.index;
-    let greatest = |group| index.allowed_vars(group).map(|var| index.value[var as usize]).max();
-    let bound: i64 = (0..index.groups()).filter_map(greatest).sum();
+    row_prices.resize(model.rows.len(), 0.0);
+    let out_of_budget = if budget.told_to_stop() { Stopped::Asked } else { Stopped::Work };
     let mut solution = Solution {
         choices: best.choices(),
         objective: best.objective(),
         bound: best.is_feasible().then_some(bound),
-        stopped: if budget.told_to_stop() { Stopped::Asked } else { Stopped::Work },
+        stopped: out_of_budget,
         violations: Vec::new(),
-        presolved: Presolved {
-            groups: model.groups.len(),
-            candidates: index.value.len(),
-            rows: model.rows.len(),
-            any_ofs: model.any_ofs.len(),
-            components: 1,
-            largest_component: model.groups.len(),
-            ..Presolved::default()
-        },
-        row_prices: vec![0.0; model.rows.len()],
+        presolved,
+        row_prices,
         work: budget.used(),
     };
     match solution.gap() {
-        Some(0.0) => solution.stopped = Stopped::Optimal,
+        Some(gap) if gap <= 0.0 => solution.stopped = Stopped::Optimal,
         Some(gap) if gap <= options.gap => solution.stopped = Stopped::Gap,
         Some(_) => {}
-        None => solution.violations = model.violations(&solution.choices),
+        None => {
+            solution.violations = model.violations(&solution.choices);
+            if bound == i64::MIN {
+                solution.stopped = Stopped::Infeasible;
+            }
+        }
     }
     budget.report(solution.objective, bound);
     solution

@@ -10,20 +10,31 @@
 //! Within a slice, boxes around what each flight does are sorted and swept; boxes that meet are
 //! compared as straight motions with a bound on how far the flights stray from them; what is left is
 //! solved exactly. Each filter keeps whatever could be a loss, by the bounds stated with it.
+//!
+//! A day ahead, times are uncertain. By how much one flight may be later than another so that they
+//! lose separation is their shift set ([`shift_set`]), an interval for each two straight pieces; the
+//! normal probability of the set is that of a loss, and what changes add to it are the expected new
+//! losses ([`expected_new_losses`]). The idea of conflict probability: Paielli & Erzberger 1997
+//! (J. Guid. Control Dyn. 20), here with errors along the track only.
 
+mod crossing;
 mod index;
 mod known;
 mod minima;
 mod pair;
+mod risk;
 mod scene;
 mod segment;
+mod shift_set;
 #[cfg(test)]
 mod tests;
 mod versions;
 
 pub use known::{is_known, new_losses};
 pub use minima::{HorizontalMinimum, Minimum};
-pub use scene::{Scene, Version, pair_losses};
+pub use risk::{PairRisk, expected_new_losses, farthest_shift_s, pair_probability, pair_risks};
+pub use scene::{Scene, Survivors, Version, filed_losses, pair_losses, survivors};
+pub use shift_set::{ShiftSet, shift_set};
 pub use versions::{
     VersionPair, VersionRef, clashes, losses_against_filed, losses_of_moved,
     new_losses_against_filed,

@@ -124,8 +124,10 @@ pub(super) fn loss(first: FlightId, second: FlightId, breach: &Breach) -> Loss {
     }
 }
 
-/// Losses between the filed versions of all flights.
-fn filed_losses(scene: &Scene) -> Vec<Loss> {
+/// Losses between the filed versions of all flights, by first flight, second flight and time;
+/// [`Scene::losses`] holds them.
+#[must_use]
+pub fn filed_losses(scene: &Scene) -> Vec<Loss> {
     let mut found: Vec<(FlightId, FlightId, Breach)> = scene
         .index
         .slices()
@@ -149,6 +151,41 @@ fn filed_losses(scene: &Scene) -> Vec<Loss> {
         .collect();
     found.sort_by(|x, y| (x.0, x.1).cmp(&(y.0, y.1)).then(x.2.from_s.total_cmp(&y.2.from_s)));
     joined(&found).map(|(first, second, breach)| loss(first, second, &breach)).collect()
+}
+
+/// How many pairs are left after each filter in the search for the filed day's losses.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub struct Survivors {
+    /// Segments: parts of flights within slices of time.
+    pub segments: u64,
+    /// Pairs of segments within one slice.
+    pub pairs: u64,
+    /// Pairs whose boxes meet.
+    pub boxes_meet: u64,
+    /// Pairs whose straight motions come near enough.
+    pub motions_meet: u64,
+    /// Pairs that lose separation.
+    pub lose: u64,
+}
+
+/// Counts the pairs that each filter leaves over.
+#[must_use]
+pub fn survivors(scene: &Scene) -> Survivors {
+    let mut count = Survivors::default();
+    for slice in scene.index.slices() {
+        let segments = slice.segments().len() as u64;
+        count.segments += segments;
+        count.pairs += segments * segments.saturating_sub(1) / 2;
+        slice.pairs(|a, b| {
+            count.boxes_meet += 1;
+            let Some(within) = a.common_time(b) else { return };
+            count.motions_meet += 1;
+            let [one, other] = [a, b].map(|s| scene.filed(FlightId(s.owner)));
+            let pair = scene.pair(&one, &other, Minimum::Plain);
+            count.lose += u64::from(!pair.breaches(within, None).is_empty());
+        });
+    }
+    count
 }
 
 /// Joins what was cut at the borders of slices. The input is sorted by pair and time.

@@ -1,8 +1,10 @@
 //! Separation against brute force, against samples of the true motion, and against values from
 //! outside.
 
+mod gas;
 mod losses;
 mod sampled;
+mod shifts;
 mod versions;
 
 use std::sync::Arc;

@@ -1,0 +1,144 @@
+//! Finding plans: the search is run, its choices become plans, and the audit has the last word.
+
+use super::decide::plan_of;
+use super::options::TooManyCombinations;
+use super::problem::Problem;
+use crate::answer::{Plans, Stopped};
+use crate::search::{self, Index, RankOptions, SolveOptions, State, choice, rank};
+use crate::traffic::Traffic;
+
+/// How to search for plans.
+#[derive(Debug, Clone, PartialEq)]
+pub struct FindOptions {
+    /// Most plans to return, at least one is.
+    pub plans: usize,
+    /// Decides between otherwise equal ways.
+    pub seed: u64,
+    /// Most work to do, in units of about one touched term of the search's model.
+    pub work: u64,
+    /// Stop once the proven gap is at most this; 0 asks for the optimum.
+    pub gap: f64,
+}
+
+impl Default for FindOptions {
+    fn default() -> Self {
+        let solve = SolveOptions::default();
+        Self { plans: 1, seed: solve.seed, work: solve.work, gap: solve.gap }
+    }
+}
+
+/// How a search is going.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Progress {
+    /// Objective of the best plan so far.
+    pub objective: f64,
+    /// Upper bound proven so far.
+    pub bound: f64,
+    /// Work done so far.
+    pub work: u64,
+}
+
+/// The caller's hold on a running search. Both may be called from several threads.
+#[derive(Clone, Copy)]
+pub struct Watch<'a> {
+    /// Asked now and then; once it gives a reason the search returns what it has.
+    pub stop: &'a (dyn Fn() -> Option<Stopped> + Sync),
+    /// Told whenever more is known.
+    pub progress: &'a (dyn Fn(Progress) + Sync),
+}
+
+impl std::fmt::Debug for Watch<'_> {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        f.debug_struct("Watch").finish_non_exhaustive()
+    }
+}
+
+impl Watch<'static> {
+    /// Never stops and listens to nothing.
+    #[must_use]
+    pub fn unattended() -> Self {
+        Self { stop: &|| None, progress: &|_| () }
+    }
+}
+
+/// Why there is no plan.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+pub enum PlanError {
+    /// The options of a flight combine in too many ways.
+    #[error(transparent)]
+    TooManyCombinations(#[from] TooManyCombinations),
+    /// The search could not use the model: a defect of this program.
+    #[error("the search could not use the model: {0}")]
+    Model(search::Defect),
+}
+
+/// Finds the best plans of a day, best first.
+///
+/// # Errors
+/// A flight's options combine in too many ways; or a defect of this program is found out.
+pub fn find(
+    traffic: &Traffic,
+    options: &FindOptions,
+    watch: Watch<'_>,
+) -> Result<Plans, PlanError> {
+    let problem = Problem::new(traffic)?;
+    let amount = |count| problem.quantum.amount(count);
+    let progress = |p: search::Progress| {
+        let (objective, bound) = (amount(p.objective), amount(p.bound));
+        (watch.progress)(Progress { objective, bound, work: p.work });
+    };
+    let stop = || (watch.stop)().is_some();
+    let rank_options = RankOptions {
+        plans: options.plans.max(1),
+        min_difference: traffic.day.policy.min_difference as usize,
+        solve: SolveOptions {
+            seed: options.seed,
+            work: options.work,
+            gap: options.gap,
+            ..SolveOptions::default()
+        },
+    };
+    let search_watch = search::Watch { stop: &stop, progress: &progress };
+    let solutions = rank(&problem.model, &rank_options, search_watch).map_err(PlanError::Model)?;
+    let index = Index::new(&problem.model).map_err(PlanError::Model)?;
+    let best = solutions.first();
+    let bound = best.and_then(|s| s.bound).map(amount);
+    let mut plans = Vec::with_capacity(solutions.len());
+    for solution in &solutions {
+        let choices = without_idle_grants(&problem, &index, &solution.choices);
+        let plan = plan_of(traffic, &problem, &index, &choices);
+        plans.push(plan);
+    }
+    let stopped = match best.map(|s| s.stopped) {
+        Some(search::Stopped::Optimal) => Stopped::Optimal,
+        Some(search::Stopped::Gap) => Stopped::Gap,
+        Some(search::Stopped::Asked) => (watch.stop)().unwrap_or(Stopped::Cancelled),
+        Some(search::Stopped::Work | search::Stopped::Infeasible) | None => Stopped::Work,
+    };
+    Ok(Plans { plans, bound, stopped })
+}
+
+/// Takes away grants that gain nothing, where the plan stays feasible without them: an option whose
+/// net benefit is not positive is granted only where it makes room for others.
+fn without_idle_grants(problem: &Problem, index: &Index, choices: &[u32]) -> Vec<u32> {
+    let Some(mut state) = State::new(index, choices) else { return choices.to_vec() };
+    loop {
+        let before = state.choices();
+        for (group, &candidate) in (0u32..).zip(&before) {
+            let Some(now) = problem.combination(choice(group, candidate)) else { continue };
+            let fewer = (0..problem.model.groups[group as usize].candidates.len() as u32)
+                .map(|candidate| choice(group, candidate))
+                .filter(|&fewer| {
+                    let grants = problem.combination(fewer).map_or(&[][..], |c| &c.grants);
+                    grants.len() < now.grants.len() && grants.iter().all(|g| now.grants.contains(g))
+                })
+                .find(|&fewer| state.gain(fewer) >= 0 && state.allows(fewer));
+            if let Some(fewer) = fewer {
+                state.switch(fewer);
+            }
+        }
+        if state.choices() == before {
+            return before;
+        }
+    }
+}

@@ -1,0 +1,211 @@
+//! From a day to the model that the search is given.
+//!
+//! A *group* is a flight that asks for something, its *candidates* the combinations of its open
+//! options (candidate 0: as filed). Two candidates *clash* where their flights would have a new
+//! loss; one that has it with a flight that cannot move is ruled out. Every limited window or
+//! minute to which some candidate adds is a *row*, every minute at which an overload could come to
+//! last an *any-of*.
+
+use std::collections::BTreeMap;
+
+use rayon::prelude::*;
+
+use super::options::{Asking, Combination, Judged, TooManyCombinations, combine_all, judge_all};
+use super::quantum::Quantum;
+use crate::change::Change;
+use crate::ids::{FlightId, IdVec, ProposalId};
+use crate::load::{Cell, Difference, Which};
+use crate::search::{AnyOf, Choice, Clash, Cost, Group, Model, Row, choice};
+use crate::separation::{Version, VersionRef, clashes};
+use crate::traffic::{Traffic, VersionMinima};
+
+/// A day's proposals as a search problem.
+#[derive(Debug)]
+pub(super) struct Problem {
+    pub(super) judged: IdVec<ProposalId, Vec<Judged>>,
+    /// One entry a group.
+    pub(super) asking: Vec<Asking>,
+    pub(super) group_of: BTreeMap<FlightId, u32>,
+    pub(super) model: Model,
+    pub(super) quantum: Quantum,
+}
+
+impl Problem {
+    pub(super) fn new(traffic: &Traffic) -> Result<Self, TooManyCombinations> {
+        let day = &traffic.day;
+        let forbidden = |flight, change: &Change| traffic.forbidden(flight, change);
+        let judged = judge_all(day, &traffic.tracks, &forbidden);
+        let asking = combine_all(day, &traffic.tracks, &judged, &forbidden)?;
+        let group_of: BTreeMap<FlightId, u32> =
+            (0u32..).zip(&asking).map(|(group, asking)| (asking.flight, group)).collect();
+        let quantum = Quantum::for_total(&day.policy, total_worth(&judged));
+        let differences = all_differences(traffic, &asking);
+        let mut model = Model {
+            groups: asking.iter().map(|a| group(a, &judged, quantum)).collect(),
+            clashes: Vec::new(),
+            rows: rows(traffic, &differences),
+            any_ofs: any_ofs(traffic, &differences),
+        };
+        add_clashes(traffic, &asking, &group_of, &mut model);
+        if let Some(most) = day.policy.max_moved_flights {
+            let moved = |(g, group): (u32, &Group)| {
+                (1..group.candidates.len() as u32).map(move |c| (choice(g, c), 1))
+            };
+            let terms = (0u32..).zip(&model.groups).flat_map(moved).collect();
+            model.rows.push(Row { slack: most.min(1e9) as i64, terms });
+        }
+        Ok(Self { judged, asking, group_of, model, quantum })
+    }
+
+    /// The combination behind a choice; `None`: as filed.
+    pub(super) fn combination(&self, choice: Choice) -> Option<&Combination> {
+        let position = choice.candidate.checked_sub(1)?;
+        self.asking[choice.group as usize].combinations.get(position as usize)
+    }
+
+    /// The candidate of a group that is exactly these grants.
+    pub(super) fn candidate_of(&self, group: u32, grants: &[super::options::Grant]) -> Option<u32> {
+        if grants.is_empty() {
+            return Some(0);
+        }
+        let combinations = &self.asking[group as usize].combinations;
+        let found = combinations.binary_search_by(|c| c.grants.as_slice().cmp(grants));
+        found.ok().map(|position| position as u32 + 1)
+    }
+
+    /// Net benefit of an alternative in units, 0 where it is invalid.
+    pub(super) fn worth(&self, grant: super::options::Grant) -> i64 {
+        worth(&self.judged, self.quantum, grant)
+    }
+}
+
+fn worth(
+    judged: &IdVec<ProposalId, Vec<Judged>>,
+    quantum: Quantum,
+    grant: super::options::Grant,
+) -> i64 {
+    let judged = &judged[grant.proposal][grant.alternative as usize];
+    judged.figures().map_or(0, |figures| quantum.count(figures.net_benefit))
+}
+
+/// The largest absolute sum that values of one choice a proposal can have.
+fn total_worth(judged: &IdVec<ProposalId, Vec<Judged>>) -> f64 {
+    let largest = |alternatives: &Vec<Judged>| {
+        let worths = alternatives.iter().filter_map(Judged::figures);
+        worths.map(|f| f.net_benefit.abs()).fold(0.0, f64::max)
+    };
+    judged.iter().map(largest).sum()
+}
+
+fn group(asking: &Asking, judged: &IdVec<ProposalId, Vec<Judged>>, quantum: Quantum) -> Group {
+    let worth_of = |c: &Combination| c.grants.iter().map(|&g| worth(judged, quantum, g)).sum();
+    let values: Vec<i64> =
+        std::iter::once(0).chain(asking.combinations.iter().map(worth_of)).collect();
+    Group::of(&values)
+}
+
+/// The differences that every candidate but the resting one makes to limited counts.
+fn all_differences(traffic: &Traffic, asking: &[Asking]) -> Vec<(Choice, Vec<Difference>)> {
+    let choices: Vec<(Choice, FlightId, &Combination)> = choices(asking).collect();
+    choices
+        .into_par_iter()
+        .map(|(choice, flight, combination)| {
+            let load = traffic.changed_load(flight, &combination.change.changed);
+            let filed = &traffic.filed[flight];
+            let which = Which::Binding;
+            (choice, traffic.loads.differences(&traffic.day, filed, &load, which))
+        })
+        .collect()
+}
+
+fn choices(asking: &[Asking]) -> impl Iterator<Item = (Choice, FlightId, &Combination)> {
+    (0u32..).zip(asking).flat_map(|(group, asking)| {
+        (1u32..)
+            .zip(&asking.combinations)
+            .map(move |(candidate, c)| (choice(group, candidate), asking.flight, c))
+    })
+}
+
+/// Terms by cell, of all cells that some candidate touches.
+fn by_cell(differences: &[(Choice, Vec<Difference>)]) -> Vec<(Cell, Choice, i32)> {
+    let mut terms: Vec<(Cell, Choice, i32)> = differences
+        .iter()
+        .flat_map(|(choice, cells)| cells.iter().map(move |&(cell, delta)| (cell, *choice, delta)))
+        .collect();
+    terms.sort_unstable();
+    terms
+}
+
+/// One row for every limited cell that some candidate adds to.
+fn rows(traffic: &Traffic, differences: &[(Choice, Vec<Difference>)]) -> Vec<Row> {
+    let terms = by_cell(differences);
+    terms
+        .chunk_by(|a, b| a.0 == b.0)
+        .filter(|terms| terms.iter().any(|t| t.2 > 0))
+        .filter_map(|terms| {
+            let slack = traffic.loads.slack(terms[0].0)?;
+            Some(Row { slack, terms: terms.iter().map(|&(_, c, delta)| (c, delta)).collect() })
+        })
+        .collect()
+}
+
+fn any_ofs(traffic: &Traffic, differences: &[(Choice, Vec<Difference>)]) -> Vec<AnyOf> {
+    let terms = by_cell(differences);
+    let cells: Vec<&[(Cell, Choice, i32)]> = terms.chunk_by(|a, b| a.0 == b.0).collect();
+    let most_added: Vec<(Cell, i64)> = cells
+        .iter()
+        .map(|terms| {
+            // At most one candidate of a group is chosen.
+            let groups = terms.chunk_by(|a, b| a.1.group == b.1.group);
+            let most = |group: &[(Cell, Choice, i32)]| {
+                group.iter().map(|t| i64::from(t.2)).max().unwrap_or(0).max(0)
+            };
+            (terms[0].0, groups.map(most).sum())
+        })
+        .collect();
+    let row = |cell: Cell, slack: i64| {
+        let found = cells.binary_search_by_key(&cell, |terms| terms[0].0);
+        let terms = found.map_or(&[][..], |position| cells[position]);
+        Row { slack, terms: terms.iter().map(|&(_, c, delta)| (c, delta)).collect() }
+    };
+    let rules = traffic.loads.lasting_rules_touching(&most_added);
+    rules
+        .into_iter()
+        .map(|rule| AnyOf {
+            rows: rule.alternatives.iter().map(|&(cell, slack)| row(cell, slack)).collect(),
+        })
+        .collect()
+}
+
+/// Adds a hard clash for every pair of candidates with a new loss, and forbids those that have one
+/// with a flight that cannot move.
+fn add_clashes(
+    traffic: &Traffic,
+    asking: &[Asking],
+    group_of: &BTreeMap<FlightId, u32>,
+    model: &mut Model,
+) {
+    let choices: Vec<(Choice, FlightId, &Combination)> = choices(asking).collect();
+    let minima: Vec<VersionMinima> = choices
+        .par_iter()
+        .map(|(_, flight, combination)| traffic.minima(*flight, &combination.change.changed))
+        .collect();
+    let versions: Vec<Version<'_>> = choices
+        .iter()
+        .zip(&minima)
+        .map(|((_, flight, c), minima)| traffic.version(*flight, &c.change.changed, minima))
+        .collect();
+    let choice_of = |version: VersionRef| match version {
+        VersionRef::Changed(index) => Some(choices[index].0),
+        VersionRef::Filed(flight) => group_of.get(&flight).map(|&group| choice(group, 0)),
+    };
+    for pair in clashes(&traffic.scene, &versions) {
+        match (choice_of(pair.a), choice_of(pair.b)) {
+            (Some(a), Some(b)) => model.clashes.push(Clash { a, b, cost: Cost::Hard }),
+            (Some(only), None) | (None, Some(only)) => {
+                model.groups[only.group as usize].forbid(only.candidate);
+            }
+            (None, None) => {}
+        }
+    }
+}
