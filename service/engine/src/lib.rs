@@ -7,6 +7,7 @@
 pub mod air;
 pub mod answer;
 pub mod ask;
+pub mod audit;
 pub mod benefit;
 pub mod change;
 pub mod check;
