@@ -4,6 +4,7 @@ use super::decide::plan_of;
 use super::options::TooManyCombinations;
 use super::problem::Problem;
 use crate::answer::{Plans, Stopped};
+use crate::audit::{AuditReport, PlanUnderAudit, audit};
 use crate::search::{self, Index, RankOptions, SolveOptions, State, choice, rank};
 use crate::traffic::Traffic;
 
@@ -67,6 +68,9 @@ pub enum PlanError {
     /// The options of a flight combine in too many ways.
     #[error(transparent)]
     TooManyCombinations(#[from] TooManyCombinations),
+    /// The audit found fault with a plan: a defect of this program. The plan is not handed out.
+    #[error("the audit found {} faults with a plan", .0.findings.len())]
+    FailedAudit(Box<AuditReport>),
     /// The search could not use the model: a defect of this program.
     #[error("the search could not use the model: {0}")]
     Model(search::Defect),
@@ -107,6 +111,12 @@ pub fn find(
     for solution in &solutions {
         let choices = without_idle_grants(&problem, &index, &solution.choices);
         let plan = plan_of(traffic, &problem, &index, &choices);
+        let report =
+            audit(&traffic.day, &PlanUnderAudit::of(&plan, bound.filter(|_| plans.is_empty())));
+        if !report.passed() {
+            tracing::error!(findings = ?report.findings, "a plan failed its audit");
+            return Err(PlanError::FailedAudit(Box::new(report)));
+        }
         plans.push(plan);
     }
     let stopped = match best.map(|s| s.stopped) {
