@@ -132,15 +132,8 @@ impl Polygon {
         if a.west >= b.east || b.west >= a.east || a.south >= b.north || b.south >= a.north {
             return false;
         }
-        let crosses = self.edges().any(|(p, q)| {
-            other.edges().any(|(r, s)| {
-                let side = |p, q, r| side_of(p, q, r).signum();
-                p != q
-                    && r != s
-                    && side(r, s, p) * side(r, s, q) < 0.0
-                    && side(p, q, r) * side(p, q, s) < 0.0
-            })
-        });
+        let crosses =
+            self.edges().any(|(p, q)| other.edges().any(|(r, s)| crosses_clearly(p, q, r, s)));
         crosses
             || self.interior_point().is_some_and(|[lon, lat]| other.contains(lon, lat))
             || other.interior_point().is_some_and(|[lon, lat]| self.contains(lon, lat))
@@ -241,6 +234,20 @@ fn check_crossings(rings: &[Vec<[f64; 2]>]) -> Result<(), PolygonError> {
     Ok(())
 }
 
+/// Degrees (about a decimetre) by which an edge must reach over another to cross it: outlines that
+/// follow the same line between different positions touch, whatever the rounding.
+const CLEARLY_DEG: f64 = 1e-6;
+
+/// Whether both ends of each edge lie clearly on different sides of the other.
+fn crosses_clearly(p: [f64; 2], q: [f64; 2], r: [f64; 2], s: [f64; 2]) -> bool {
+    let parted = |a: [f64; 2], b: [f64; 2], c: [f64; 2], d: [f64; 2]| {
+        let length = (b[0] - a[0]).hypot(b[1] - a[1]);
+        let (c, d) = (side_of(a, b, c) / length, side_of(a, b, d) / length);
+        c.min(d) < -CLEARLY_DEG && c.max(d) > CLEARLY_DEG
+    };
+    parted(p, q, r, s) && parted(r, s, p, q)
+}
+
 /// Twice the signed area of a triangle: positive where `r` lies left of the line from `p` to `q`.
 fn side_of(p: [f64; 2], q: [f64; 2], r: [f64; 2]) -> f64 {
     (q[0] - p[0]) * (r[1] - p[1]) - (q[1] - p[1]) * (r[0] - p[0])
@@ -289,6 +296,18 @@ mod tests {
         let p = Polygon::new(rings).unwrap();
         assert!(!p.contains(1.0, 1.0));
         assert!(p.contains(0.25, 1.0));
+    }
+
+    #[test]
+    fn polygons_that_touch_along_a_slanted_line_share_no_area() {
+        // Both follow the line from (0, 0) to (3, 1), with positions of their own.
+        let above = vec![[0.0, 0.0], [0.3, 0.1], [3.0, 1.0], [0.0, 3.0], [0.0, 0.0]];
+        let below = vec![[0.0, 0.0], [3.0, -1.0], [3.0, 1.0], [2.1, 0.7], [0.0, 0.0]];
+        let [above, below] = [above, below].map(|ring| Polygon::new(vec![ring]).unwrap());
+        assert!(!above.shares_area_with(&below) && !below.shares_area_with(&above));
+        let over = vec![[0.0, 0.0], [3.0, -1.0], [3.0, 1.1], [0.0, 0.0]];
+        assert!(above.shares_area_with(&Polygon::new(vec![over]).unwrap()));
+        assert!(square().shares_area_with(&square()));
     }
 
     #[test]
