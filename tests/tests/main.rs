@@ -1,0 +1,3 @@
+//! Checks of the whole: one module a boundary.
+
+mod tidy;
