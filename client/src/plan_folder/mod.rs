@@ -13,7 +13,7 @@ mod document;
 mod read;
 mod tables;
 #[cfg(test)]
-mod tests;
+pub(crate) mod tests;
 mod write;
 
 pub(crate) use document::{ReasonDocument, StretchDocument};

@@ -12,3 +12,5 @@ pub(crate) mod names;
 pub(crate) mod plan;
 pub(crate) mod policy;
 mod sheet;
+#[cfg(test)]
+mod tests;
