@@ -1,123 +1,107 @@
-//! The days held, and the plans kept under them.
-//!
-//! Readers take an `Arc` of a whole day and keep it for as long as their call lasts; replacing or
-//! deleting a day waits for nobody. The locks are held only to look up or change a map entry.
+//! A loaded day: ready to answer questions, with the plans kept under it.
 
-use std::collections::BTreeMap;
-use std::sync::{Arc, PoisonError, RwLock};
+use std::sync::Arc;
 use std::time::SystemTime;
 
-use rimeshift_engine::day::Day;
+use rimeshift_engine::answer::DayCheck;
+use rimeshift_engine::check::check;
+use rimeshift_engine::day::{Day, Policy};
+use rimeshift_engine::plan::PlanState;
+use rimeshift_engine::traffic::Traffic;
+use tokio::sync::{Mutex, OnceCell};
 
-use crate::error::{Kind, ServiceError};
-use crate::names::DayName;
+use crate::compute::{Compute, Work};
+use crate::error::ServiceError;
+use crate::names::{DayName, PlanName};
+use crate::plans::KeptPlan;
+use crate::shelf::Shelf;
+use crate::wire::answer::Answers;
+use crate::wire::clock::DayClock;
 
-/// A loaded day: never changed once it is here.
+/// Days under other policies than their own that are kept ready, per day.
+const MOST_VARIANTS: usize = 2;
+
+/// A day with all that questions need.
+#[derive(Debug)]
+pub(crate) struct Ready {
+    /// The day with its indexes.
+    pub(crate) traffic: Traffic,
+    /// The day as filed.
+    pub(crate) filed: PlanState,
+    /// Its clock.
+    pub(crate) clock: DayClock,
+    /// Made when first asked for. Asynchronous, as a worker that waited for another to make it
+    /// could be the very worker that is to make it.
+    check: OnceCell<Arc<DayCheck>>,
+}
+
+impl Ready {
+    /// Builds the indexes.
+    pub(crate) fn new(day: Day, clock: DayClock) -> Self {
+        let traffic = Traffic::new(day);
+        let filed = PlanState::filed(&traffic);
+        Self { traffic, filed, clock, check: OnceCell::new() }
+    }
+
+    /// The day itself.
+    pub(crate) fn day(&self) -> &Day {
+        &self.traffic.day
+    }
+
+    /// Turns answers about it into messages.
+    pub(crate) fn answers(&self) -> Answers<'_> {
+        Answers { day: &self.traffic.day, clock: self.clock }
+    }
+}
+
+/// A loaded day: never changed once it is here, but for the plans kept under it.
 #[derive(Debug)]
 pub(crate) struct LoadedDay {
     /// Its name.
     pub(crate) name: DayName,
-    /// The day.
-    pub(crate) day: Day,
+    /// The day under its own policy.
+    pub(crate) ready: Arc<Ready>,
     /// SHA-256 of its canonical form, in hexadecimal.
     pub(crate) sha256: String,
     /// When it was loaded.
     pub(crate) loaded: SystemTime,
+    /// Plans kept.
+    pub(crate) plans: Shelf<PlanName, KeptPlan>,
+    /// The day under other policies, the latest used last.
+    pub(crate) variants: Mutex<Vec<Arc<Ready>>>,
 }
 
-/// Whether a resource that is there already may be replaced.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub(crate) enum Replace {
-    /// Yes.
-    Allowed,
-    /// No: it is an error.
-    Refused,
-}
-
-impl From<bool> for Replace {
-    /// From the field `allow_replace`.
-    fn from(allow_replace: bool) -> Self {
-        if allow_replace { Self::Allowed } else { Self::Refused }
-    }
-}
-
-/// Days by name.
-#[derive(Debug)]
-pub(crate) struct Days {
-    by_name: RwLock<BTreeMap<DayName, Arc<LoadedDay>>>,
-    most: usize,
-}
-
-impl Days {
-    /// No days yet, and at most so many later.
-    pub(crate) fn new(most: usize) -> Self {
-        Self { by_name: RwLock::new(BTreeMap::new()), most }
+impl LoadedDay {
+    /// The filed day looked over; worked out once.
+    pub(crate) async fn check(&self, compute: &Compute) -> Result<Arc<DayCheck>, ServiceError> {
+        let ready = Arc::clone(&self.ready);
+        let make = || compute.run(Work::Job, None, move |_| Arc::new(check(&ready.traffic)));
+        self.ready.check.get_or_try_init(make).await.cloned()
     }
 
-    /// The day of that name.
-    pub(crate) fn get(&self, name: &DayName) -> Result<Arc<LoadedDay>, ServiceError> {
-        self.read().get(name).cloned().ok_or_else(|| not_found(name))
-    }
-
-    /// Up to `most` days by name, from the first after `after` on.
-    pub(crate) fn page(&self, after: Option<&DayName>, most: usize) -> Vec<Arc<LoadedDay>> {
-        use std::ops::Bound::{Excluded, Unbounded};
-        let start = after.map_or(Unbounded, Excluded);
-        self.read().range((start, Unbounded)).take(most).map(|(_, day)| Arc::clone(day)).collect()
-    }
-
-    /// Whether a day could be put under that name now.
-    pub(crate) fn check_room(&self, name: &DayName, replace: Replace) -> Result<(), ServiceError> {
-        check_room(&self.read(), name, replace, self.most)
-    }
-
-    /// Puts a day under its name.
-    pub(crate) fn put(&self, day: Arc<LoadedDay>, replace: Replace) -> Result<(), ServiceError> {
-        let mut by_name = self.by_name.write().unwrap_or_else(PoisonError::into_inner);
-        check_room(&by_name, &day.name, replace, self.most)?;
-        let replaced = by_name.insert(day.name.clone(), day);
-        drop(by_name);
-        // Freed outside the lock: a day is large.
-        drop(replaced);
-        Ok(())
-    }
-
-    /// Deletes the day of that name.
-    pub(crate) fn delete(&self, name: &DayName) -> Result<(), ServiceError> {
-        let mut by_name = self.by_name.write().unwrap_or_else(PoisonError::into_inner);
-        let deleted = by_name.remove(name);
-        drop(by_name);
-        deleted.map(drop).ok_or_else(|| not_found(name))
-    }
-
-    fn read(&self) -> std::sync::RwLockReadGuard<'_, BTreeMap<DayName, Arc<LoadedDay>>> {
-        self.by_name.read().unwrap_or_else(PoisonError::into_inner)
-    }
-}
-
-fn not_found(name: &DayName) -> ServiceError {
-    ServiceError::NotFound { kind: Kind::Day, name: name.to_string() }
-}
-
-fn check_room(
-    days: &BTreeMap<DayName, Arc<LoadedDay>>,
-    name: &DayName,
-    replace: Replace,
-    most: usize,
-) -> Result<(), ServiceError> {
-    if days.contains_key(name) {
-        return match replace {
-            Replace::Allowed => Ok(()),
-            Replace::Refused => {
-                Err(ServiceError::AlreadyExists { kind: Kind::Day, name: name.to_string() })
+    /// The day under a policy.
+    pub(crate) async fn under(
+        &self,
+        policy: &Policy,
+        compute: &Compute,
+    ) -> Result<Arc<Ready>, ServiceError> {
+        if *policy == self.ready.day().policy {
+            return Ok(Arc::clone(&self.ready));
+        }
+        let mut variants = self.variants.lock().await;
+        let found = variants.iter().position(|ready| ready.day().policy == *policy);
+        let ready = match found {
+            Some(place) => variants.remove(place),
+            None => {
+                let clock = self.ready.clock;
+                let day = Day { policy: policy.clone(), ..self.ready.day().clone() };
+                Arc::new(compute.run(Work::Job, None, move |_| Ready::new(day, clock)).await?)
             }
         };
+        variants.push(Arc::clone(&ready));
+        if variants.len() > MOST_VARIANTS {
+            variants.remove(0);
+        }
+        Ok(ready)
     }
-    if days.len() >= most {
-        return Err(ServiceError::Exhausted {
-            subject: "days",
-            problem: format!("{most} days are held, the most allowed; delete one"),
-        });
-    }
-    Ok(())
 }

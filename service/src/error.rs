@@ -70,6 +70,14 @@ impl Kind {
             Self::Plan => "rimeshift/Plan",
         }
     }
+
+    /// Several of them, as the subject of a limit.
+    pub(crate) fn plural(self) -> &'static str {
+        match self {
+            Self::Day => "days",
+            Self::Plan => "plans",
+        }
+    }
 }
 
 /// How much detail about bad fields a status may carry.

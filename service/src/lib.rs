@@ -1,7 +1,8 @@
 //! The Rimeshift gRPC service: wire messages to the engine's data and back, the days held, and
 //! where their CPU work runs.
 //!
-//! Reading order: `wire` (messages to data), `days` (what is held), `compute` (where work runs),
+//! Reading order: `wire` (messages to data), `shelf`, `days`,
+//! `plans` (what is held), `compute` (where work runs),
 //! `handlers` (decode, call, encode), `error` (one table to gRPC statuses), then [`serve`].
 
 #![warn(
@@ -14,12 +15,15 @@
 mod canonical;
 mod compute;
 mod days;
+mod deadline;
 mod error;
 mod handlers;
 mod names;
 mod pipe;
+mod plans;
 mod serve;
 mod settings;
+mod shelf;
 mod stream;
 mod wire;
 

@@ -86,7 +86,6 @@ impl Limits {
             ask_threads: self.ask_threads.unwrap_or(default.ask_threads),
             max_jobs: self.max_jobs.unwrap_or(default.max_jobs),
             max_waiting_jobs: self.max_waiting_jobs.unwrap_or(default.max_waiting_jobs),
-            default_work: default.default_work,
         }
     }
 }

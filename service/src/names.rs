@@ -6,6 +6,8 @@ use crate::error::ServiceError;
 
 /// Longest id.
 const LONGEST_ID: usize = 63;
+/// Longest id that leaves room for a rank.
+const LONGEST_RANKABLE: usize = 60;
 const HINT: &str = "1 to 63 lower-case letters, digits and hyphens, no hyphen at either end";
 
 /// The id of a day or plan: 1 to 63 lower-case letters, digits and hyphens (RFC 1034 but for the
@@ -27,14 +29,19 @@ impl ResourceId {
         }
     }
 
+    /// Checks an id to which ranks are to be added: it must leave room for them.
+    pub(crate) fn parse_rankable(path: &str, id: &str) -> Result<Self, ServiceError> {
+        if id.len() > LONGEST_RANKABLE {
+            let problem = format!("`{id}` is too long");
+            let hint = format!("at most {LONGEST_RANKABLE} characters, as ranks are added");
+            return Err(ServiceError::bad_field(path, problem, hint));
+        }
+        Self::parse(path, id)
+    }
+
     /// The id of the plan of this rank: itself for the best, else with the rank behind it.
     pub(crate) fn ranked(&self, rank: usize) -> Self {
         if rank <= 1 { self.clone() } else { Self(format!("{}-{rank}", self.0)) }
-    }
-
-    /// How long it is, in characters.
-    pub(crate) fn len(&self) -> usize {
-        self.0.len()
     }
 }
 

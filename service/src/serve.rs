@@ -5,6 +5,8 @@ use std::time::Duration;
 
 use rimeshift_proto::v1;
 use rimeshift_proto::v1::day_service_server::DayServiceServer;
+use rimeshift_proto::v1::plan_service_server::PlanServiceServer;
+use rimeshift_proto::v1::traffic_service_server::TrafficServiceServer;
 use tokio::io::{AsyncRead, AsyncWrite};
 use tokio_stream::Stream;
 use tonic::transport::Server;
@@ -50,6 +52,8 @@ where
     let api = Api::start(settings)?;
     let (health, health_service) = tonic_health::server::health_reporter();
     health.set_serving::<DayServiceServer<Api>>().await;
+    health.set_serving::<TrafficServiceServer<Api>>().await;
+    health.set_serving::<PlanServiceServer<Api>>().await;
 
     let (told, is_told) = tokio::sync::oneshot::channel();
     let compute = std::sync::Arc::clone(&api.compute);
@@ -65,7 +69,9 @@ where
         .add_service(health_service)
         .add_service(reflection()?.build_v1()?)
         .add_service(reflection()?.build_v1alpha()?)
-        .add_service(DayServiceServer::new(api))
+        .add_service(DayServiceServer::new(api.clone()))
+        .add_service(TrafficServiceServer::new(api.clone()))
+        .add_service(PlanServiceServer::new(api))
         .serve_with_incoming_shutdown(incoming, stopping);
     tokio::select! {
         served = serving => Ok(served?),

@@ -25,8 +25,6 @@ pub struct Settings {
     pub max_jobs: usize,
     /// Most of them waiting.
     pub max_waiting_jobs: usize,
-    /// Most work of a search that names none, in steps of the search.
-    pub default_work: u64,
 }
 
 impl Default for Settings {
@@ -43,7 +41,6 @@ impl Default for Settings {
             ask_threads: threads.div_ceil(2),
             max_jobs: 2,
             max_waiting_jobs: 64,
-            default_work: 100_000_000,
         }
     }
 }

@@ -143,9 +143,8 @@ fn shown(state: &SearchProgress) -> String {
         |gap| format!("within {} of the bound", percent(gap)),
     );
     format!(
-        "planning: net benefit {}, {gap}, {} of {} parts proven",
+        "planning: net benefit {}, {gap}, {} steps of work",
         scientific(state.objective),
-        state.parts_closed,
-        state.parts
+        state.work
     )
 }

@@ -8,14 +8,16 @@ use rimeshift_engine::day::{Day, DayParts, Defect, Policy, Warning};
 use rimeshift_proto::v1;
 use rimeshift_proto::v1::day_service_server::DayService;
 use rimeshift_proto::v1::load_day_request::Content;
+use tokio::sync::Mutex;
 use tonic::{Request, Response, Status, Streaming};
 
 use super::{Api, paging};
 use crate::canonical;
 use crate::compute::Work;
-use crate::days::{LoadedDay, Replace};
-use crate::error::{DetailRoom, ServiceError};
+use crate::days::{LoadedDay, Ready};
+use crate::error::{DetailRoom, Kind, ServiceError};
 use crate::names::{DayName, ResourceId};
+use crate::shelf::{Replace, Shelf};
 use crate::stream::RowStream;
 use crate::wire::clock::{self, DayClock};
 use crate::wire::fields::Fields;
@@ -38,8 +40,8 @@ impl DayService for Api {
         let replace = Replace::from(header.allow_replace);
         let room = DetailRoom::of_request(header.max_defects);
         // Early, so that nobody sends a day in vain.
-        self.days.check_room(&name, replace)?;
-        let mut receiving = begin(header)?;
+        self.days.check_room(std::slice::from_ref(&name), replace)?;
+        let (mut receiving, clock) = begin(header)?;
         while let Some(message) = stream.next().await? {
             match message.content {
                 Some(Content::Rows(rows)) => {
@@ -52,14 +54,16 @@ impl DayService for Api {
         }
         let listed = |defects| Status::from(ServiceError::BadFields { defects, room });
         let parts = receiving.finish().map_err(listed)?;
+        let most_plans = self.settings.max_plans_per_day;
         let (loaded, warnings) = self
             .compute
-            .run(Work::Job, None, move |_| build(name, parts))
+            .run(Work::Job, None, move |_| build(name, parts, clock, most_plans))
             .await?
             .map_err(listed)?;
         let loaded = Arc::new(loaded);
-        self.days.put(Arc::clone(&loaded), replace)?;
-        tracing::info!(day = %loaded.name, flights = loaded.day.flights.len(), "day loaded");
+        self.days.put(vec![(loaded.name.clone(), Arc::clone(&loaded))], replace)?;
+        let flights = loaded.ready.day().flights.len();
+        tracing::info!(day = %loaded.name, flights, "day loaded");
         let (warnings, warning_count) = to_wire::warnings(warnings);
         Ok(Response::new(v1::LoadDayResponse {
             day: Some(to_wire::day(&loaded)),
@@ -111,7 +115,10 @@ impl DayService for Api {
     ) -> Result<Response<v1::ListPolicyKeysResponse>, Status> {
         let keys = match request.into_inner().day.as_str() {
             "" => policy::keys(&Policy::default()),
-            name => policy::keys(&self.days.get(&DayName::parse("day", name)?)?.day.policy),
+            name => {
+                let day = self.days.get(&DayName::parse("day", name)?)?;
+                policy::keys(&day.ready.day().policy)
+            }
         };
         Ok(Response::new(v1::ListPolicyKeysResponse { keys }))
     }
@@ -127,7 +134,7 @@ fn second_header() -> ServiceError {
 
 /// A day from its header. A bad date ends the load, as no time can be read without it; what is
 /// wrong with the policy is kept and told with everything else.
-fn begin(header: v1::LoadDayHeader) -> Result<Receiving, ServiceError> {
+fn begin(header: v1::LoadDayHeader) -> Result<(Receiving, DayClock), ServiceError> {
     let bad_date =
         |problem| ServiceError::bad_field("header.date", problem, "a date of the years 1 to 9999");
     let wire = header.date.ok_or_else(|| bad_date("is missing".to_owned()))?;
@@ -139,12 +146,24 @@ fn begin(header: v1::LoadDayHeader) -> Result<Receiving, ServiceError> {
     let mut receiving = Receiving::new(date, clock, header.region, Fields::default());
     let (policy, fields) = receiving.policy_and_fields();
     policy::apply(header.policy, policy, &[], fields);
-    Ok(receiving)
+    Ok((receiving, clock))
 }
 
-fn build(name: DayName, parts: DayParts) -> Result<(LoadedDay, Vec<Warning>), Vec<Defect>> {
+fn build(
+    name: DayName,
+    parts: DayParts,
+    clock: DayClock,
+    most_plans: usize,
+) -> Result<(LoadedDay, Vec<Warning>), Vec<Defect>> {
     let built = Day::build(parts)?;
     let sha256 = canonical::day_sha256(&built.day);
-    let loaded = LoadedDay { name, day: built.day, sha256, loaded: SystemTime::now() };
+    let loaded = LoadedDay {
+        name,
+        ready: Arc::new(Ready::new(built.day, clock)),
+        sha256,
+        loaded: SystemTime::now(),
+        plans: Shelf::new(Kind::Plan, most_plans),
+        variants: Mutex::default(),
+    };
     Ok((loaded, built.warnings))
 }

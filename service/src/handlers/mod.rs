@@ -1,18 +1,25 @@
 //! One module a service: decode, call, encode, nothing more.
 
+mod ask;
 mod day;
+mod find;
 mod paging;
+mod plan;
+mod traffic;
 
 use std::sync::Arc;
 
 use crate::compute::Compute;
-use crate::days::Days;
+use crate::days::LoadedDay;
+use crate::error::Kind;
+use crate::names::DayName;
 use crate::settings::Settings;
+use crate::shelf::Shelf;
 
 /// What every handler works with.
 #[derive(Debug, Clone)]
 pub(crate) struct Api {
-    pub(crate) days: Arc<Days>,
+    pub(crate) days: Arc<Shelf<DayName, LoadedDay>>,
     pub(crate) compute: Arc<Compute>,
     pub(crate) settings: Arc<Settings>,
     /// Places for streams of rows.
@@ -26,7 +33,7 @@ impl Api {
     /// The system gives no threads.
     pub(crate) fn start(settings: Settings) -> Result<Self, rayon::ThreadPoolBuildError> {
         Ok(Self {
-            days: Arc::new(Days::new(settings.max_days)),
+            days: Arc::new(Shelf::new(Kind::Day, settings.max_days)),
             compute: Arc::new(Compute::start(&settings)?),
             loads: Arc::new(tokio::sync::Semaphore::new(
                 settings.max_loads.min(tokio::sync::Semaphore::MAX_PERMITS),

@@ -5,9 +5,13 @@
 //! Adding a column: its protobuf field, a line in `from_wire`, and one in `canonical` so that it
 //! counts for the day's hash.
 
+pub(crate) mod answer;
 pub(crate) mod chunks;
 pub(crate) mod clock;
 pub(crate) mod fields;
+pub(crate) mod finding;
+pub(crate) mod plan_rows;
 pub(crate) mod policy;
+pub(crate) mod question;
 pub(crate) mod rows;
 pub(crate) mod to_wire;

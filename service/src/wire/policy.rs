@@ -48,6 +48,11 @@ pub(crate) fn contradictions(policy: &Policy, fields: &mut Fields) {
     }
 }
 
+/// Whether a key has another value in one policy than in another.
+pub(crate) fn differs(key: &str, a: &Policy, b: &Policy) -> bool {
+    PolicyKey::find(key).is_some_and(|key| key.get(a) != key.get(b))
+}
+
 fn value_from_wire(value: Option<v1::PolicyValue>) -> PolicyValue {
     use v1::policy_value::Kind;
     match value.and_then(|value| value.kind) {

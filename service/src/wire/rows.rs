@@ -277,7 +277,7 @@ fn required_time(
 }
 
 /// Seconds of the day where a time is given; what is no time is noted.
-fn optional_time(
+pub(crate) fn optional_time(
     clock: DayClock,
     path: impl FnOnce() -> String,
     time: Option<Timestamp>,

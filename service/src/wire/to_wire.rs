@@ -1,17 +1,18 @@
-//! Summaries of a day to the wire.
+//! Summaries of days and plans to the wire.
 
-use rimeshift_engine::day::{Date, Day, Warning};
+use rimeshift_engine::day::{Date, Day, Policy, Warning};
 use rimeshift_proto::v1;
 
-use super::{clock, policy};
+use super::{answer, clock, policy};
 use crate::days::LoadedDay;
+use crate::plans::{Counts, KeptPlan, PlanRecord};
 
 /// Most warnings that an answer lists.
 const MOST_WARNINGS: usize = 1000;
 
 /// A day's summary.
 pub(crate) fn day(loaded: &LoadedDay) -> v1::Day {
-    let day = &loaded.day;
+    let day = loaded.ready.day();
     v1::Day {
         name: loaded.name.to_string(),
         date: Some(date(day.date)),
@@ -55,5 +56,50 @@ fn counts(day: &Day) -> v1::DayCounts {
         flights: count(day.flights.len()),
         points: count(day.flights.iter().map(|f| f.profile.points().len()).sum()),
         proposals: count(day.proposals.len()),
+    }
+}
+
+/// A kept plan's summary.
+pub(crate) fn kept_plan(plan: &KeptPlan, day_sha256: &str) -> v1::Plan {
+    v1::Plan {
+        name: plan.name.to_string(),
+        origin: Some(origin(&plan.record, &plan.policy, day_sha256)),
+        ..plan_summary(&plan.record)
+    }
+}
+
+/// A plan's summary without name and origin.
+pub(crate) fn plan_summary(record: &PlanRecord) -> v1::Plan {
+    v1::Plan {
+        rank: record.rank,
+        objective: record.objective,
+        expected_new_losses: record.expected_new_losses,
+        counts: Some(plan_counts(record.counts)),
+        ..Default::default()
+    }
+}
+
+/// What all plans of a search share.
+pub(crate) fn origin(record: &PlanRecord, by: &Policy, day_sha256: &str) -> v1::PlanOrigin {
+    v1::PlanOrigin {
+        day_sha256: day_sha256.to_owned(),
+        program_version: record.program_version.clone(),
+        policy: policy::settings(by),
+        seed: record.seed,
+        stopped: answer::stopped(record.stopped).into(),
+        bound: record.bound,
+        gap: record.gap,
+    }
+}
+
+fn plan_counts(counts: Counts) -> v1::PlanCounts {
+    v1::PlanCounts {
+        granted: count(counts.granted),
+        amended: count(counts.amended),
+        refused: count(counts.refused),
+        invalid: count(counts.invalid),
+        moved_flights: count(counts.moved_flights),
+        removed_losses: count(counts.removed_losses),
+        new_losses: count(counts.new_losses),
     }
 }

@@ -4,4 +4,7 @@
 
 mod any_message;
 mod days;
+mod plans;
+mod serving;
 mod support;
+mod traffic;
