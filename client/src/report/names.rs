@@ -115,6 +115,8 @@ pub(crate) fn finding_kind(kind: i32) -> &'static str {
         FindingKind::PlanLimit => "plan-limit",
         FindingKind::Figure => "figure",
         FindingKind::Profile => "profile",
+        FindingKind::Reason => "reason",
+        FindingKind::Maximality => "maximality",
     }
 }
 
