@@ -10,7 +10,9 @@ use std::collections::BTreeMap;
 
 use rayon::prelude::*;
 
-use super::options::{Asking, Combination, Judged, TooManyCombinations, combine_all, judge_all};
+use super::options::{
+    Asking, Combination, Grant, Judged, TooManyCombinations, combine_all, judge_all,
+};
 use super::quantum::Quantum;
 use crate::change::Change;
 use crate::ids::{FlightId, IdVec, ProposalId};
@@ -38,7 +40,7 @@ impl Problem {
         let asking = combine_all(day, &traffic.tracks, &judged, &forbidden)?;
         let group_of: BTreeMap<FlightId, u32> =
             (0u32..).zip(&asking).map(|(group, asking)| (asking.flight, group)).collect();
-        let quantum = Quantum::for_total(&day.policy, total_worth(&judged));
+        let quantum = Quantum::for_total(&day.policy, total_worth(&judged, &asking));
         let differences = all_differences(traffic, &asking);
         let mut model = Model {
             groups: asking.iter().map(|a| group(a, &judged, quantum)).collect(),
@@ -64,7 +66,7 @@ impl Problem {
     }
 
     /// The candidate of a group that is exactly these grants.
-    pub(super) fn candidate_of(&self, group: u32, grants: &[super::options::Grant]) -> Option<u32> {
+    pub(super) fn candidate_of(&self, group: u32, grants: &[Grant]) -> Option<u32> {
         if grants.is_empty() {
             return Some(0);
         }
@@ -74,27 +76,24 @@ impl Problem {
     }
 
     /// Net benefit of an alternative in units, 0 where it is invalid.
-    pub(super) fn worth(&self, grant: super::options::Grant) -> i64 {
+    pub(super) fn worth(&self, grant: Grant) -> i64 {
         worth(&self.judged, self.quantum, grant)
     }
 }
 
-fn worth(
-    judged: &IdVec<ProposalId, Vec<Judged>>,
-    quantum: Quantum,
-    grant: super::options::Grant,
-) -> i64 {
+fn worth(judged: &IdVec<ProposalId, Vec<Judged>>, quantum: Quantum, grant: Grant) -> i64 {
     let judged = &judged[grant.proposal][grant.alternative as usize];
     judged.figures().map_or(0, |figures| quantum.count(figures.net_benefit))
 }
 
-/// The largest absolute sum that values of one choice a proposal can have.
-fn total_worth(judged: &IdVec<ProposalId, Vec<Judged>>) -> f64 {
-    let largest = |alternatives: &Vec<Judged>| {
-        let worths = alternatives.iter().filter_map(Judged::figures);
-        worths.map(|f| f.net_benefit.abs()).fold(0.0, f64::max)
+/// The absolute worths of all candidates together: the search keeps them all.
+fn total_worth(judged: &IdVec<ProposalId, Vec<Judged>>, asking: &[Asking]) -> f64 {
+    let worth_of = |grant: &Grant| {
+        let judged = &judged[grant.proposal][grant.alternative as usize];
+        judged.figures().map_or(0.0, |figures| figures.net_benefit.abs())
     };
-    judged.iter().map(largest).sum()
+    let combinations = asking.iter().flat_map(|asking| &asking.combinations);
+    combinations.flat_map(|c| c.grants.iter().map(worth_of)).sum()
 }
 
 fn group(asking: &Asking, judged: &IdVec<ProposalId, Vec<Judged>>, quantum: Quantum) -> Group {
