@@ -38,12 +38,12 @@ impl Measure for Occupancy {
         add: &mut dyn FnMut(Place, Range<i32>),
     ) {
         for visit in &load.visits {
-            for period in &day.sectors[visit.sector].open {
+            let open = &day.sectors[visit.sector].open;
+            let first = open.partition_point(|period| period.until_s <= visit.in_s);
+            for period in open[first..].iter().take_while(|p| p.from_s < visit.out_s) {
                 let from_s = visit.in_s.max(period.from_s);
                 let until_s = visit.out_s.min(period.until_s);
-                if from_s < until_s {
-                    add(Place::Sector(visit.sector), times.minutes_within(from_s, until_s));
-                }
+                add(Place::Sector(visit.sector), times.minutes_within(from_s, until_s));
             }
         }
     }

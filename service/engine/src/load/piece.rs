@@ -114,29 +114,32 @@ impl Piece {
 
     fn cut_at_edges(&self, volume: &Volume, cuts: &mut Vec<f64>) {
         let [west, south, east, north] = self.bounds();
-        for (p, q) in volume.polygon.edges() {
-            if (p[0] < west && q[0] < west)
+        // `for_each` rather than `for`: nested iterators are several times faster from within.
+        volume.polygon.edges().for_each(|(p, q)| {
+            let beyond = (p[0] < west && q[0] < west)
                 || (p[0] > east && q[0] > east)
                 || (p[1] < south && q[1] < south)
-                || (p[1] > north && q[1] > north)
-            {
-                continue;
+                || (p[1] > north && q[1] > north);
+            if !beyond && let Some(share) = self.crossing(p, q) {
+                push_inner(cuts, share);
             }
-            // Whichever way a polygon runs along an edge, the crossing is the same number.
-            let (p, q) = if (p[1], p[0]) <= (q[1], q[0]) { (p, q) } else { (q, p) };
-            let edge = [q[0] - p[0], q[1] - p[1]];
-            let to_edge = [p[0] - self.lon_deg, p[1] - self.lat_deg];
-            let across = self.lon_step_deg * edge[1] - self.lat_step_deg * edge[0];
-            // Along an edge nothing changes; where the edge ends, its neighbours are crossed.
-            if across == 0.0 {
-                continue;
-            }
-            let along_edge =
-                (to_edge[0] * self.lat_step_deg - to_edge[1] * self.lon_step_deg) / across;
-            if (-BEYOND_EDGE..=1.0 + BEYOND_EDGE).contains(&along_edge) {
-                push_inner(cuts, (to_edge[0] * edge[1] - to_edge[1] * edge[0]) / across);
-            }
+        });
+    }
+
+    /// Where the line of the piece meets an edge, as a share of the piece.
+    fn crossing(&self, p: [f64; 2], q: [f64; 2]) -> Option<f64> {
+        // Whichever way a polygon runs along an edge, the crossing is the same number.
+        let (p, q) = if (p[1], p[0]) <= (q[1], q[0]) { (p, q) } else { (q, p) };
+        let edge = [q[0] - p[0], q[1] - p[1]];
+        let to_edge = [p[0] - self.lon_deg, p[1] - self.lat_deg];
+        let across = self.lon_step_deg * edge[1] - self.lat_step_deg * edge[0];
+        // Along an edge nothing changes; where the edge ends, its neighbours are crossed.
+        if across == 0.0 {
+            return None;
         }
+        let along_edge = (to_edge[0] * self.lat_step_deg - to_edge[1] * self.lon_step_deg) / across;
+        let meets = (-BEYOND_EDGE..=1.0 + BEYOND_EDGE).contains(&along_edge);
+        meets.then(|| (to_edge[0] * edge[1] - to_edge[1] * edge[0]) / across)
     }
 
     fn is_inside(&self, volume: &Volume, cover: Cover, share: f64) -> bool {
