@@ -168,13 +168,10 @@ impl Polygon {
             return false;
         }
         // A ray to the east: an edge counts if it spans the latitude, half-open.
-        let mut inside = false;
-        for (a, b) in self.edges() {
-            if (a[1] > lat_deg) != (b[1] > lat_deg) && lon_deg < edge_lon_at(a, b, lat_deg) {
-                inside = !inside;
-            }
-        }
-        inside
+        let is_crossed = |(a, b): &([f64; 2], [f64; 2])| {
+            (a[1] > lat_deg) != (b[1] > lat_deg) && lon_deg < edge_lon_at(*a, *b, lat_deg)
+        };
+        self.edges().filter(is_crossed).count() % 2 == 1
     }
 }
 

@@ -2,7 +2,7 @@
 
 use super::index::Cover;
 use crate::day::Volume;
-use crate::path::Knot;
+use crate::path::{Knot, lon_step_deg};
 
 /// A crossing this little beyond the end of an edge counts, as a share of the edge. A crossing too
 /// many costs nothing, because what is inside is decided between crossings.
@@ -24,18 +24,10 @@ pub(super) struct Piece {
 
 impl Piece {
     pub(super) fn new(a: &Knot, b: &Knot) -> Self {
-        let step = b.lon_deg - a.lon_deg;
-        let lon_step_deg = if step > 180.0 {
-            step - 360.0
-        } else if step < -180.0 {
-            step + 360.0
-        } else {
-            step
-        };
         Self {
             lon_deg: a.lon_deg,
             lat_deg: a.lat_deg,
-            lon_step_deg,
+            lon_step_deg: lon_step_deg(a.lon_deg, b.lon_deg),
             lat_step_deg: b.lat_deg - a.lat_deg,
             level_ft: a.level_ft,
             level_step_ft: b.level_ft - a.level_ft,

@@ -13,4 +13,5 @@ mod changed;
 mod track;
 
 pub use changed::{Changed, Path};
+pub(crate) use track::lon_step_deg;
 pub use track::{Knot, LONGEST_PIECE_M, Track};
