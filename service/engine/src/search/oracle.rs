@@ -108,10 +108,13 @@ fn is_maximal(model: &Model, choices: &[u32]) -> bool {
 fn check(model: &Model, best: Option<i64>, solution: &Solution) {
     if best.is_none() {
         assert!(!solution.violations.is_empty());
+        assert_eq!(solution.stopped, Stopped::Infeasible);
+        assert_eq!(solution.bound, None);
         return;
     }
     assert_eq!(solution.violations, model.violations(&solution.choices));
-    if solution.violations.is_empty() {
+    assert_eq!(solution.violations, []);
+    {
         assert_eq!(solution.objective, model.objective(&solution.choices));
         assert!(solution.bound >= best, "bound {:?} {best:?}", solution.bound);
         assert_eq!(Some(solution.objective), best);
@@ -128,6 +131,63 @@ fn answers_are_feasible_maximal_and_bounded() {
         let best = enumerate(&model).first().map(|&(objective, _)| objective);
         let solution = solve(&model, &SolveOptions::default(), Watch::unattended()).unwrap();
         check(&model, best, &solution);
+    }
+}
+
+#[test]
+fn plans_come_in_order_and_differ_enough() {
+    for seed in 0..600 {
+        let mut rng = Pcg64::seed_from_u64(seed);
+        let model = random_model(&mut rng, seed % 3 == 0);
+        let min_difference = 1 + seed as usize % 3;
+        let options = RankOptions { plans: 4, min_difference, solve: SolveOptions::default() };
+        let plans = rank(&model, &options, Watch::unattended()).unwrap();
+        if enumerate(&model).is_empty() {
+            assert_eq!(plans.len(), 1);
+            assert_eq!(plans[0].stopped, Stopped::Infeasible);
+            continue;
+        }
+        for (position, plan) in plans.iter().enumerate() {
+            assert_eq!(model.violations(&plan.choices), []);
+            assert_eq!(plan.stopped, Stopped::Optimal);
+            assert_eq!(plan.bound, Some(plan.objective));
+            assert_eq!(
+                plan.objective,
+                best_differing(&model, &plans[..position], min_difference).unwrap()
+            );
+        }
+        let another = best_differing(&model, &plans, min_difference);
+        assert!(plans.len() == 4 || another.is_none(), "seed {seed}");
+    }
+}
+
+/// The objective of the best choices that differ enough from all of these plans.
+fn best_differing(model: &Model, plans: &[Solution], min_difference: usize) -> Option<i64> {
+    let differs = |choices: &[u32], plan: &Solution| {
+        choices.iter().zip(&plan.choices).filter(|(a, b)| a != b).count() >= min_difference
+    };
+    let mut all = enumerate(model).into_iter();
+    all.find(|(_, choices)| plans.iter().all(|plan| differs(choices, plan)))
+        .map(|(objective, _)| objective)
+}
+
+#[test]
+fn forced_choices_are_made_at_the_least_cost() {
+    for seed in 0..600 {
+        let mut rng = Pcg64::seed_from_u64(seed);
+        let model = random_model(&mut rng, false);
+        let options = SolveOptions::default();
+        let solution = solve(&model, &options, Watch::unattended()).unwrap();
+        let forced = any_choice(&mut rng, &model);
+        let mut fixed = model.clone();
+        fixed.groups[forced.group as usize].fix(forced.candidate);
+        let answer = solve_forced(&model, &solution, forced, &options, Watch::unattended());
+        if !model.candidate(forced).unwrap().allowed {
+            assert_eq!(answer, Err(Defect::NothingAllowed { group: forced.group }));
+            continue;
+        }
+        let best = enumerate(&fixed).first().map(|&(objective, _)| objective);
+        check(&fixed, best, &answer.unwrap());
     }
 }
 

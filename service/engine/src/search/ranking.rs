@@ -32,7 +32,11 @@ pub fn rank(
     let mut plans: Vec<Solution> = Vec::new();
     let own_rows = model.rows.len();
     for _ in 0..options.plans {
-        let mut solution = solve(&model, &options.solve, watch)?;
+        let mut ask = options.solve.clone();
+        if let Some(better) = plans.last() {
+            ask.start = Some(better.choices.clone());
+        }
+        let mut solution = solve(&model, &ask, watch)?;
         if !solution.violations.is_empty() {
             if plans.is_empty() {
                 plans.push(solution);
