@@ -197,7 +197,7 @@ async fn the_best_plan_is_found_kept_and_passes_its_audit() {
 async fn several_plans_are_ranked_and_kept_by_rank() {
     let channel = service(small()).await;
     let mut rows = small_day();
-    rows.flights.push(eastbound("G1", 10.0, 50.0, 31_000.0));
+    rows.flights.push(eastbound("G1", 10.0, 50.0, 37_000.0));
     let mut second = proposal("Q1", "G1", 35_000.0, 0);
     second.options[0].figures.as_mut().unwrap().contrail_km_avoided = Some(90.0);
     rows.proposals = vec![proposal("P1", "F1", 35_000.0, 0), second];

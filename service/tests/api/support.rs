@@ -14,6 +14,9 @@ pub(crate) const MIDNIGHT: i64 = 1_930_348_800;
 
 /// A channel to a service of its own, which ends with the test's runtime.
 pub(crate) async fn service(settings: Settings) -> Channel {
+    // The service's log is shown with a test that fails. Only the first call can set it.
+    let log = tracing_subscriber::fmt().with_max_level(tracing::Level::WARN).with_test_writer();
+    let _ = log.try_init();
     let (connector, incoming) = pipe();
     tokio::spawn(serve(incoming, settings, std::future::pending()));
     Endpoint::from_static("http://in-memory")
