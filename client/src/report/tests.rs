@@ -297,6 +297,7 @@ fn an_audit_says_whether_the_plan_holds() {
             ..Finding::default()
         }],
         finding_count: 3,
+        ..AuditPlanResponse::default()
     };
     assert!(!report.holds());
     check(

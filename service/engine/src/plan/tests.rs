@@ -161,8 +161,7 @@ fn a_full_window_grants_as_many_as_fit() {
 
 #[test]
 fn each_way_out_of_a_plan_has_its_reason() {
-    let mut policy = Policy::default();
-    policy.max_arrival_shift_s = Some(60.0);
+    let policy = Policy { max_arrival_shift_s: Some(60.0), ..Policy::default() };
     let fuel = AlternativeParts {
         extra_fuel_kg: Some(100.0),
         max_extra_fuel_kg: Some(50.0),
@@ -231,8 +230,7 @@ fn a_known_loss_downstream_does_not_block_and_one_in_trail_does() {
 
 #[test]
 fn the_number_of_moved_flights_can_be_limited() {
-    let mut policy = Policy::default();
-    policy.max_moved_flights = Some(1.0);
+    let policy = Policy { max_moved_flights: Some(1.0), ..Policy::default() };
     let parts = DayParts {
         policy,
         flights: vec![eastbound("A", 0.0, 0.0), eastbound("B", 0.0, 1.0)],

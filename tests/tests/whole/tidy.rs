@@ -25,20 +25,47 @@ const MAY_IMPORT: &[(&str, &[&str])] = &[
     ),
     (
         "check",
-        &["geometry", "day", "answer", "path", "change", "separation", "load", "benefit", "traffic"],
+        &[
+            "geometry",
+            "day",
+            "answer",
+            "path",
+            "change",
+            "separation",
+            "load",
+            "benefit",
+            "traffic",
+        ],
     ),
     (
         "ask",
         &[
-            "geometry", "day", "answer", "path", "change", "separation", "load", "benefit",
-            "traffic", "plan",
+            "geometry",
+            "day",
+            "answer",
+            "path",
+            "change",
+            "separation",
+            "load",
+            "benefit",
+            "traffic",
+            "plan",
         ],
     ),
     (
         "plan",
         &[
-            "geometry", "day", "answer", "path", "change", "separation", "load", "benefit",
-            "traffic", "search", "audit",
+            "geometry",
+            "day",
+            "answer",
+            "path",
+            "change",
+            "separation",
+            "load",
+            "benefit",
+            "traffic",
+            "search",
+            "audit",
         ],
     ),
 ];
@@ -142,7 +169,9 @@ fn the_engine_has_no_mouth_no_clock_and_no_files() {
 
 #[test]
 fn rust_files_open_with_what_they_answer() {
-    for folder in ["service/engine/src", "service/src", "client/src", "proto/src", "demo-sectors/src"] {
+    for folder in
+        ["service/engine/src", "service/src", "client/src", "proto/src", "demo-sectors/src"]
+    {
         for file in rust_files(&repository().join(folder)) {
             let name = file.file_name().and_then(|n| n.to_str()).unwrap_or("");
             if name == "tests.rs" || file.components().any(|c| c.as_os_str() == "tests") {

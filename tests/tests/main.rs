@@ -1,3 +1,0 @@
-//! Checks of the whole: one module a boundary.
-
-mod tidy;

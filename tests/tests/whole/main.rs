@@ -1,0 +1,5 @@
+//! Checks of the whole: one module a boundary.
+
+#![expect(clippy::expect_used, reason = "a test fails by panicking")]
+
+mod tidy;
