@@ -29,6 +29,37 @@ pub(crate) enum Answered {
     AuditFailed,
 }
 
+/// In what terms the service's paths of fields are shown.
+#[derive(Debug, Clone, Copy)]
+pub(crate) enum Terms<'a> {
+    /// As files of a day folder name them.
+    Folder(&'a DayFolder),
+    /// As options of the command line: paths, and the option that each stands for.
+    Options(&'a [(&'a str, &'a str)]),
+    /// As they are.
+    Fields,
+}
+
+impl Terms<'_> {
+    fn place(self, path: &str) -> String {
+        match self {
+            Terms::Folder(folder) => folder.place_of(path),
+            Terms::Options(options) => options
+                .iter()
+                .find(|(field, _)| *field == path)
+                .map_or_else(|| path.to_owned(), |(_, option)| (*option).to_owned()),
+            Terms::Fields => path.to_owned(),
+        }
+    }
+
+    fn text(self, text: &str) -> String {
+        match self {
+            Terms::Folder(folder) => folder.in_file_terms(text),
+            Terms::Options(_) | Terms::Fields => text.to_owned(),
+        }
+    }
+}
+
 /// Why a command gave no answer.
 #[derive(Debug)]
 pub(crate) enum Failure {
@@ -53,13 +84,13 @@ impl Failure {
         Failure::input(path.display(), Problem::new(format!("can't be written: {error}")))
     }
 
-    /// What a status of the service means; paths in it are led back to the folder's files.
-    pub(crate) fn of_status(status: &Status, folder: Option<&DayFolder>) -> Failure {
+    /// What a status of the service means; paths in it are put in terms of what was given.
+    pub(crate) fn of_status(status: &Status, terms: Terms<'_>) -> Failure {
         let text = status.message();
         match status.code() {
             Code::InvalidArgument => {
                 let mut findings = Findings::default();
-                for defect in violations(status, folder) {
+                for defect in violations(status, terms) {
                     match defect.hint {
                         Some(hint) => {
                             findings.defects.add_with_hint(defect.place, defect.problem, hint);
@@ -100,23 +131,19 @@ fn reason(status: &Status) -> String {
     deepest
 }
 
-/// The bad fields that a status names, in terms of the folder's files.
-fn violations(status: &Status, folder: Option<&DayFolder>) -> Vec<Defect> {
+/// The bad fields that a status names.
+fn violations(status: &Status, terms: Terms<'_>) -> Vec<Defect> {
     let Some(request) = status.get_details_bad_request() else { return Vec::new() };
-    let in_file_terms = |text: &str| match folder {
-        Some(folder) => folder.in_file_terms(text),
-        None => text.to_owned(),
-    };
     request
         .field_violations
         .into_iter()
         .map(|violation| {
-            let place = match folder {
-                Some(folder) => folder.place_of(&violation.field),
-                None => violation.field,
-            };
             let (problem, hint) = split_hint(&violation.description);
-            Defect { place, problem: in_file_terms(problem), hint: hint.map(in_file_terms) }
+            Defect {
+                place: terms.place(&violation.field),
+                problem: terms.text(problem),
+                hint: hint.map(|hint| terms.text(hint)),
+            }
         })
         .collect()
 }

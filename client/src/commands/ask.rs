@@ -2,7 +2,7 @@
 
 use super::session::{LoadedDay, Session};
 use crate::args::{flight_level, time};
-use crate::exit::{Answered, Failure};
+use crate::exit::{Answered, Failure, Terms};
 use crate::plan_folder;
 use crate::report::ask::AskReport;
 use crate::screen::Form;
@@ -32,6 +32,14 @@ pub(crate) struct AskArgs {
     #[arg(long, value_name = "TIME", value_parser = time)]
     until: Option<Timestamp>,
 }
+
+/// The fields of the question, and the options that they come from.
+const OPTIONS: [(&str, &str); 4] = [
+    ("change.flight", "--flight"),
+    ("change.stretches[0].level_ft", "--level"),
+    ("change.stretches[0].from", "--from"),
+    ("change.stretches[0].until", "--until"),
+];
 
 /// Asks about one level change.
 ///
@@ -69,8 +77,10 @@ async fn ask(args: &AskArgs, session: &Session<'_>, day: &LoadedDay) -> Result<A
     let beside_plan = !plan.is_empty();
     let request = AskChangeRequest { day: day.day.name.clone(), plan, change: Some(change) };
     let response = session.plans().ask_change(request).await;
-    // Paths of this request name options of the command line, not rows of the folder.
-    let answer = response.map_err(|status| Failure::of_status(&status, None))?.into_inner().answer;
+    let answer = response
+        .map_err(|status| Failure::of_status(&status, Terms::Options(&OPTIONS)))?
+        .into_inner()
+        .answer;
     Ok(AskReport {
         flight: args.flight.clone(),
         level_fl: args.level,

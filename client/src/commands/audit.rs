@@ -1,7 +1,7 @@
 //! `rimeshift audit`: a plan judged by code that shares none of the search's shortcuts.
 
 use super::session::{LoadedDay, Session};
-use crate::exit::{Answered, Failure};
+use crate::exit::{Answered, Failure, Terms};
 use crate::plan_folder;
 use crate::report::audit::AuditReport;
 use crate::screen::Form;
@@ -43,5 +43,5 @@ async fn audit(
     let progress = session.screen.begin("auditing the plan");
     let answer = session.plans().audit_plan(AuditPlanRequest { name }).await;
     progress.finish_and_clear();
-    Ok(answer.map_err(|status| Failure::of_status(&status, None))?.into_inner())
+    Ok(answer.map_err(|status| Failure::of_status(&status, Terms::Fields))?.into_inner())
 }

@@ -3,7 +3,7 @@
 
 use crate::connect::connect;
 use crate::day_folder::{self, DayFolder, Reading};
-use crate::exit::Failure;
+use crate::exit::{Failure, Terms};
 use crate::screen::Screen;
 use rimeshift_proto::v1::day_service_client::DayServiceClient;
 use rimeshift_proto::v1::plan_service_client::PlanServiceClient;
@@ -41,7 +41,7 @@ pub(crate) struct LoadedDay {
 impl LoadedDay {
     /// What a status about this day means.
     pub(crate) fn failure(&self, status: &Status) -> Failure {
-        Failure::of_status(status, Some(&self.folder))
+        Failure::of_status(status, Terms::Folder(&self.folder))
     }
 }
 
@@ -80,7 +80,7 @@ impl<'a> Session<'a> {
         let request = ListPolicyKeysRequest { day: day.to_owned() };
         match self.days().list_policy_keys(request).await {
             Ok(response) => Ok(response.into_inner().keys),
-            Err(status) => Err(Failure::of_status(&status, None)),
+            Err(status) => Err(Failure::of_status(&status, Terms::Fields)),
         }
     }
 
@@ -101,7 +101,7 @@ impl<'a> Session<'a> {
         progress.set_message("loading the day");
         let loaded = self.send(&day, &day_id()).await;
         progress.finish_and_clear();
-        let loaded = loaded.map_err(|status| Failure::of_status(&status, Some(&day)))?;
+        let loaded = loaded.map_err(|status| Failure::of_status(&status, Terms::Folder(&day)))?;
         warnings.extend(loaded.warnings.iter().map(|warning| {
             let message = day.in_file_terms(&warning.message);
             match warning.path.as_str() {

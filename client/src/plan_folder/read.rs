@@ -5,7 +5,7 @@ use super::tables::{read_loads, read_losses};
 use super::{DOCUMENT, FoundPlan, points_name};
 use crate::commands::session::{LoadedDay, Session};
 use crate::day_folder::{midnight, read_profiles};
-use crate::exit::Failure;
+use crate::exit::{Failure, Terms};
 use crate::tables::findings::Findings;
 use crate::tables::findings::shown;
 use crate::tables::table_file::TableFile;
@@ -149,7 +149,8 @@ pub(crate) async fn load(
     requests.extend(messages(plan.0.rows));
     let response = session.plans().load_plan(tokio_stream::iter(requests)).await;
     // Paths of this request name parts of the plan, not rows of the day folder.
-    let loaded = response.map_err(|status| Failure::of_status(&status, None))?.into_inner();
+    let loaded =
+        response.map_err(|status| Failure::of_status(&status, Terms::Fields))?.into_inner();
     Ok(loaded.plan.unwrap_or_default().name)
 }
 

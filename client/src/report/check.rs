@@ -125,6 +125,7 @@ impl CheckReport {
             "near_direction_boundary": summary.near_direction_boundary,
             "snapped_levels": summary.snapped_levels,
             "overloads": self.overloads.iter().map(overload_json).collect::<Vec<_>>(),
+            "expected_new_losses": 0.0,
             "losses": self.losses.iter().map(loss_json).collect::<Vec<_>>(),
             "invalid_proposals": self.invalid_proposals.iter().map(|invalid| json!({
                 "proposal": invalid.proposal,
