@@ -27,6 +27,8 @@ pub struct Flight {
     pub movable: bool,
     /// Highest level that it may be moved to, in FL.
     pub ceiling_fl: u32,
+    /// Vertical rate that its requests reckon with, feet a minute: the slower of both directions.
+    pub change_fpm: f64,
     /// Fuel in cruise, kilograms a minute, for the figures given with proposals.
     pub cruise_kg_per_min: f64,
     /// Filed profile.

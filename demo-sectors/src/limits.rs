@@ -10,7 +10,7 @@ use crate::{
 /// Periods of a sector's day: from and until in minutes from 00:00. The first and the last are
 /// night.
 const PERIODS: [(i32, i32); 6] =
-    [(-120, 300), (300, 600), (600, 840), (840, 1020), (1020, 1260), (1260, 1560)];
+    [(-120, 180), (180, 600), (600, 840), (840, 1020), (1020, 1260), (1260, 1560)];
 const NIGHT: [bool; 6] = [true, false, false, false, false, true];
 
 /// Capacity rows of every sector.
@@ -25,12 +25,13 @@ pub fn capacity_rows(sectors: &[Sector], tallies: &[SectorTally]) -> Vec<Capacit
             if night && sector.closed_at_night || !night && sector.night_only {
                 continue;
             }
-            let entries = tally::hourly(&tally.entries, from_min, until_min);
-            let changes = tally::hourly(&tally.changes, from_min, until_min);
+            let entries = tally::hourly(&tally.entries, from_min - 20, until_min + 20);
+            let changes = tally::hourly(&tally.changes, from_min - 20, until_min + 20);
             let inside = tally::minutes(&tally.inside, from_min, until_min);
-            // Close to the busiest hour, and in every third sector a little below it.
-            let share = if index % 3 == 0 { 0.85 } else { 1.0 };
-            let hour = |counts: &[u32]| Some(tally::quantile(counts, share).max(3));
+            // A little below the busiest hour in every third sector, else a little above, so that
+            // some changes find the sector full and some compete for the last places.
+            let (share, spare) = [(0.85, 0), (1.0, 1), (1.0, 2)][index % 3];
+            let hour = |counts: &[u32]| Some(tally::quantile(counts, share).max(4) + spare);
             let minute = |share| Some(tally::quantile(inside, share).max(2));
             let mut row = CapacityRow {
                 sector: sector.sector.clone(),

@@ -16,7 +16,7 @@ use rimeshift_demo_sectors::{
 const DATE: &str = "2031-03-04";
 const SEED: u64 = 20_310_304;
 /// Number of ice regions.
-const ICE_REGIONS: usize = 36;
+const ICE_REGIONS: usize = 42;
 
 const DAY_TOML: &str = r#"# An invented day: nothing here is real. Written by the program in demo-sectors.
 date = "2031-03-04"

@@ -58,8 +58,6 @@ pub struct Crossing {
     pub until_s: f64,
 }
 
-/// Vertical rate that stretches reckon with, feet per minute (common practice, no source).
-const RATE_FPM: f64 = 1000.0;
 const SAMPLE_S: f64 = 20.0;
 /// Ice with a gap shorter than this is one crossing.
 const JOIN_S: f64 = 240.0;
@@ -102,9 +100,8 @@ pub fn crossings(flight: &Flight, ice: &[IceRegion], least_s: f64) -> Vec<Crossi
 }
 
 /// Seconds that a change between two levels takes.
-#[must_use]
-pub fn transition_s(from_fl: u32, to_fl: u32) -> f64 {
-    f64::from(from_fl.abs_diff(to_fl)) * 100.0 / RATE_FPM * 60.0
+fn transition_s(flight: &Flight, from_fl: u32, to_fl: u32) -> f64 {
+    f64::from(from_fl.abs_diff(to_fl)) * 100.0 / flight.change_fpm * 60.0
 }
 
 /// The stretch that keeps a flight at another level through a crossing.
@@ -116,7 +113,7 @@ pub fn stretch(flight: &Flight, crossing: &Crossing, level_fl: u32) -> Option<St
     if level_fl == run.level_fl || level_fl < 250 || level_fl > flight.ceiling_fl {
         return None;
     }
-    let change_s = transition_s(run.level_fl, level_fl);
+    let change_s = transition_s(flight, run.level_fl, level_fl);
     let from_climb = run.first > 0 && crossing.from_s - change_s - 60.0 < run.from_s;
     let to_descent =
         run.last + 1 < flight.points.len() && crossing.until_s + change_s + 90.0 > run.until_s;
@@ -154,7 +151,7 @@ fn extra_fuel_kg(kg_per_min: f64, filed_fl: u32, level_fl: u32, minutes: f64) ->
 /// Kilometres of ice met in a stretch at the filed level less those met at the new one.
 #[must_use]
 pub fn avoided_km(flight: &Flight, ice: &[IceRegion], crossing: &Crossing, s: &Stretch) -> f64 {
-    let change_s = transition_s(crossing.run.level_fl, s.level_fl);
+    let change_s = transition_s(flight, crossing.run.level_fl, s.level_fl);
     let from_s = s.from_s.map_or(crossing.run.from_s, |t| t + change_s);
     let until_s = s.until_s.unwrap_or(crossing.run.until_s);
     let mut time_s = from_s;

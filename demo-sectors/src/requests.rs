@@ -25,9 +25,11 @@ pub fn invent(
 ) -> Vec<Proposal> {
     let mut used = vec![false; flights.len()];
     let mut proposals = invalid(flights, sectors, &mut used);
-    proposals.extend(deep(flights, &mut used));
-    proposals.extend(costly(flights, ice, &mut used));
-    proposals.extend(in_two_steps(flights, &mut used));
+    let mut special = deep(flights, &mut used);
+    special.extend(costly(flights, ice, &mut used));
+    special.extend(in_two_steps(flights, &mut used));
+    special.retain(|p| !enters_kept_levels(&flights[p.flight], p, sectors));
+    proposals.extend(special);
     let mut order: Vec<usize> = (0..flights.len()).filter(|i| !used[*i]).collect();
     order.shuffle(rng);
     // Stable: those that arrive at the edge of a window first, else in drawn order.
@@ -39,7 +41,9 @@ pub fn invent(
         let flight = &flights[index];
         if flight.movable {
             let room = WANTED - proposals.len();
-            proposals.extend(from_ice(rng, index, flight, ice).into_iter().take(room));
+            let asked = from_ice(rng, index, flight, ice);
+            let known = |p: &Proposal| !enters_kept_levels(flight, p, sectors);
+            proposals.extend(asked.into_iter().filter(known).take(room));
         }
     }
     // Stable: proposals of one flight stay in the order made.
@@ -89,6 +93,29 @@ pub fn arrive_at_edges(flights: &mut [Flight], ice: &[IceRegion], wanted: usize)
         }
         moved += 1;
     }
+}
+
+/// Whether any option is off its filed level where levels must stay as filed: those who ask know
+/// these sectors and leave them alone.
+fn enters_kept_levels(flight: &Flight, proposal: &Proposal, sectors: &[Sector]) -> bool {
+    let kept: Vec<&Sector> = sectors.iter().filter(|s| s.no_changes).collect();
+    let stretches = proposal.options.iter().flat_map(|o| &o.stretches);
+    stretches.into_iter().any(|s| {
+        let from_s = s.from_s.unwrap_or(flight.start_s());
+        let until_s = s.until_s.map_or(flight.end_s(), |t| t + 400.0);
+        let mut time_s = from_s;
+        while time_s < until_s {
+            let inside = profile::at_time(&flight.points, time_s).is_some_and(|(lon, lat, fl)| {
+                let (low, high) = (fl.min(f64::from(s.level_fl)), fl.max(f64::from(s.level_fl)));
+                kept.iter().any(|k| k.contains(lon, lat, low) || k.contains(lon, lat, high))
+            });
+            if inside {
+                return true;
+            }
+            time_s += 60.0;
+        }
+        false
+    })
 }
 
 /// What one flight asks for: one proposal for all its crossings or one each; now and then the
@@ -317,9 +344,9 @@ fn forbidden_air(flights: &[Flight], sectors: &[Sector], used: &mut [bool]) -> V
     made
 }
 
-/// Six long descents by 6 000 ft, whose gain of time is more than the day's policy allows.
+/// Ten long descents by 6 000 ft, whose gain of time is more than the day's policy allows.
 fn deep(flights: &[Flight], used: &mut [bool]) -> Vec<Proposal> {
-    take(flights, used, 6, |i, f| {
+    take(flights, used, 10, |i, f| {
         let run = long_run(f, 3300.0).filter(|r| f.movable && f.rvsm && r.level_fl < 390)?;
         let level_fl = neighbour(f, &run, -3)?;
         let (from, until) = (run.from_s + 60.0, run.until_s - 600.0);
@@ -341,6 +368,9 @@ fn costly(flights: &[Flight], ice: &[IceRegion], used: &mut [bool]) -> Vec<Propo
     };
     let mut made = take(flights, used, 8, |i, f| {
         let mut options = options(f)?;
+        if i % 2 == 0 {
+            options.truncate(1);
+        }
         let first = options.first_mut()?;
         let fuel_kg: f64 = first.stretches.iter().filter_map(|s| s.extra_fuel_kg).sum();
         first.max_extra_fuel_kg = Some((fuel_kg * 0.6).floor());

@@ -152,6 +152,7 @@ fn one(
                 rvsm,
                 movable: !rng.random_bool(0.02),
                 ceiling_fl: class.ceiling_fl,
+                change_fpm: f64::from(class.rates_fpm.0.min(class.rates_fpm.1)),
                 cruise_kg_per_min: class.kg_per_min,
                 points,
             });

@@ -92,6 +92,7 @@ pub fn fly_all(table: &Timetable, options: &Options) -> Result<Modelled, String>
             rvsm: true,
             movable: true,
             ceiling_fl: class.ceiling_fl,
+            change_fpm: f64::from(class.rates_fpm.0.min(class.rates_fpm.1)),
             cruise_kg_per_min: class.kg_per_min,
             points,
         });
