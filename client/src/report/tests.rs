@@ -132,7 +132,7 @@ fn a_check_counts_first_and_lists_then() {
     check(
         &keys(&report.json()),
         expect![
-            "cautions date day_sha256 flights invalid_proposals losses near_direction_boundary no_cruise not_movable overloads proposals region snapped_levels"
+            "cautions date day_sha256 expected_new_losses flights invalid_proposals losses near_direction_boundary no_cruise not_movable overloads proposals region snapped_levels"
         ],
     );
 }
@@ -376,5 +376,5 @@ fn every_value_that_the_service_may_send_has_its_word() {
     assert_eq!(known(values(&|value| names::stopped(value).to_owned())), 5);
     assert_eq!(known(values(&|value| names::loss_version(value).to_owned())), 3);
     assert_eq!(known(values(&|value| names::load_column(value).to_owned())), 6);
-    assert_eq!(known(values(&|value| names::finding_kind(value).to_owned())), 7);
+    assert_eq!(known(values(&|value| names::finding_kind(value).to_owned())), 9);
 }

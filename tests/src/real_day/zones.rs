@@ -31,9 +31,9 @@ pub fn of_state(state: &str, lon_deg: f64, lat_deg: f64) -> &'static str {
         "CO" | "ID" | "MT" | "NM" | "UT" | "WY" => MOUNTAIN,
         "CA" | "NV" | "OR" | "WA" => PACIFIC,
         "AL" | "AR" | "IA" | "IL" | "KS" | "LA" | "MN" | "MO" | "MS" | "ND" | "NE" | "OK"
-        | "SD" | "TN" | "TX" | "WI" => CENTRAL,
+        | "SD" | "TX" | "WI" => CENTRAL,
         "CT" | "DC" | "DE" | "FL" | "GA" | "KY" | "MA" | "MD" | "ME" | "MI" | "NC" | "NH"
-        | "NJ" | "NY" | "OH" | "PA" | "RI" | "SC" | "VA" | "VT" | "WV" => EASTERN,
+        | "NJ" | "NY" | "OH" | "PA" | "RI" | "SC" | "TN" | "VA" | "VT" | "WV" => EASTERN,
         // A few airports have no state in the table.
         _ if lon_deg > -87.6 => EASTERN,
         _ if lon_deg > -101.5 => CENTRAL,
