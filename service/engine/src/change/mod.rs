@@ -7,8 +7,8 @@
 //! later places are passed earlier or later by the time gained or lost; no speed control absorbs
 //! it.
 //!
-//! Every step works in *filed time*, the coordinate along the track: [`flown`] turns it into new
-//! times, [`rules`] judges, [`make`] puts one stretch after the other, [`levels`] knows the
+//! Every step works in *filed time*, the coordinate along the track: `flown` turns it into new
+//! times, `rules` judges, `make` puts one stretch after the other, `levels` knows the
 //! cruising levels by direction.
 
 mod flown;

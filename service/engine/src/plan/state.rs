@@ -8,9 +8,13 @@ use crate::answer::{Constraint, Loss};
 use crate::change::Change;
 use crate::ids::FlightId;
 use crate::load::{Difference, FlightLoad, PlannedLoads, Which};
-use crate::path::Changed;
+use crate::path::{Changed, Path};
 use crate::separation::{Version, new_losses, new_losses_against_filed};
 use crate::traffic::{Traffic, VersionMinima};
+
+/// What is added to the widest minimum before a pair is passed over, metres: far more than any
+/// tolerance of the exact test.
+const NEAR_M: f64 = 1000.0;
 
 /// A moved flight.
 #[derive(Debug, Clone)]
@@ -21,6 +25,45 @@ pub struct Moved {
     pub minima: VersionMinima,
     /// What it is now counted for.
     pub load: FlightLoad,
+    span: Span,
+}
+
+/// When and where a path is at most: a cheap test of whether two flights can meet.
+#[derive(Debug, Clone, Copy)]
+struct Span {
+    from_s: f64,
+    until_s: f64,
+    low_m: [f64; 3],
+    high_m: [f64; 3],
+}
+
+impl Span {
+    fn of(path: &Path<'_>) -> Self {
+        let mut span = Self {
+            from_s: path.start_s(),
+            until_s: path.end_s(),
+            low_m: [f64::INFINITY; 3],
+            high_m: [f64::NEG_INFINITY; 3],
+        };
+        // Between two knots a path is a straight chord, hence in the box of its knots.
+        for knot in path.knots_from(0) {
+            for k in 0..3 {
+                span.low_m[k] = span.low_m[k].min(knot.position_m[k]);
+                span.high_m[k] = span.high_m[k].max(knot.position_m[k]);
+            }
+        }
+        span
+    }
+
+    /// Whether two paths may be within a distance of each other at one time.
+    fn meets(&self, other: &Self, within_m: f64) -> bool {
+        self.from_s <= other.until_s
+            && other.from_s <= self.until_s
+            && (0..3).all(|k| {
+                self.low_m[k] - within_m <= other.high_m[k]
+                    && other.low_m[k] - within_m <= self.high_m[k]
+            })
+    }
 }
 
 /// The planned day.
@@ -46,7 +89,8 @@ impl PlanState {
             let filed = &traffic.filed[flight];
             state.loads.apply(&traffic.loads.differences(&traffic.day, filed, &load, Which::All));
             let minima = traffic.minima(flight, &change.changed);
-            state.moved.insert(flight, Moved { change, minima, load });
+            let span = Span::of(&traffic.path(flight, Some(&change.changed)));
+            state.moved.insert(flight, Moved { change, minima, load, span });
         }
         state
     }
@@ -129,7 +173,10 @@ impl PlanState {
         let other_of = |l: &Loss| if l.first == flight { l.second } else { l.first };
         let mut found: Vec<Loss> = new_losses_against_filed(scene, &version);
         found.retain(|loss| !self.moved.contains_key(&other_of(loss)));
-        for (other, moved) in self.moved().filter(|(other, _)| *other != flight) {
+        let span = Span::of(&version.path);
+        let within_m = traffic.widest_minimum_m() + NEAR_M;
+        let near = |moved: &Moved| span.meets(&moved.span, within_m);
+        for (other, moved) in self.moved().filter(|(other, m)| *other != flight && near(m)) {
             let other = traffic.version(other, &moved.change.changed, &moved.minima);
             found.extend(new_losses(scene, &version, &other));
         }

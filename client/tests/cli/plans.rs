@@ -1,0 +1,97 @@
+//! Plans: found, written, audited, asked beside; the demo.
+
+use crate::support::{arg, bytes_in, day_with, program, run, told};
+use expect_test::expect;
+use std::fs;
+
+#[test]
+fn a_plan_is_written_holds_in_the_audit_and_can_be_asked_beside() {
+    let day = day_with("");
+    let within = tempfile::tempdir().expect("a folder");
+    let plan = within.path().join("plan");
+    let (folder, out) = (arg(day.path()), arg(&plan));
+    let planned = run(&["plan", folder, "--out", out]);
+    assert_eq!(planned.code, Some(0), "{}", planned.err);
+    expect![[""]].assert_eq(&planned.out.replace(out, "PLAN"));
+
+    let audited = run(&["audit", folder, out]);
+    assert_eq!(audited.code, Some(0), "{}{}", audited.out, audited.err);
+    assert!(audited.out.starts_with("Nowhere 2031-03-04: the plan holds"), "{}", audited.out);
+
+    let again = within.path().join("again");
+    assert_eq!(run(&["plan", folder, "--out", arg(&again)]).code, Some(0));
+    assert_eq!(bytes_in(&plan), bytes_in(&again));
+
+    let refused = run(&["plan", folder, "--out", out]);
+    assert_eq!(refused.code, Some(2), "{}", refused.err);
+    assert!(refused.err.contains("--replace"), "{}", refused.err);
+    assert_eq!(run(&["plan", folder, "--out", out, "--replace"]).code, Some(0));
+
+    let window = ["--from", "2031-03-04T06:10:00Z", "--until", "2031-03-04T06:50:00Z"];
+    let mut args = vec!["ask", folder, "--plan", out, "--flight", "AAA1", "--level", "340"];
+    args.extend(window);
+    let asked = run(&args);
+    assert_eq!(asked.code, Some(0), "{}", asked.err);
+    assert!(asked.out.contains("beside the plan"), "{}", asked.out);
+}
+
+#[test]
+fn a_plan_that_is_tampered_with_fails_the_audit() {
+    let day = day_with("");
+    let within = tempfile::tempdir().expect("a folder");
+    let plan = within.path().join("plan");
+    let (folder, out) = (arg(day.path()), arg(&plan));
+    assert_eq!(run(&["plan", folder, "--out", out]).code, Some(0));
+    let document = plan.join("plan.json");
+    let text = fs::read_to_string(&document).expect("text");
+    let refused = "\"verdict\": \"refused\",\n          \"option\": null";
+    assert!(text.contains(refused), "{text}");
+    let granted = "\"verdict\": \"granted\",\n          \"option\": 1";
+    fs::write(&document, text.replace(refused, granted)).expect("written");
+    let audited = run(&["audit", folder, out]);
+    assert_eq!(audited.code, Some(4), "{}{}", audited.out, audited.err);
+    assert!(audited.out.contains("the plan does not hold"), "{}", audited.out);
+}
+
+#[test]
+fn a_plan_of_another_day_is_refused() {
+    let day = day_with("");
+    let other = day_with("=== aircraft.csv\naircraft,ceiling_fl\nMJET,430\n");
+    let within = tempfile::tempdir().expect("a folder");
+    let plan = within.path().join("plan");
+    assert_eq!(run(&["plan", arg(day.path()), "--out", arg(&plan)]).code, Some(0));
+    let audited = run(&["audit", arg(other.path()), arg(&plan)]);
+    assert_eq!(audited.code, Some(2), "{}", audited.err);
+    assert!(audited.err.contains("is a plan for another day"), "{}", audited.err);
+}
+
+#[test]
+fn proposals_of_another_file_take_the_place_of_the_days() {
+    let day = day_with("");
+    let within = tempfile::tempdir().expect("a folder");
+    let plan = within.path().join("plan");
+    let proposals = within.path().join("wishes.csv");
+    fs::write(&proposals, "proposal,flight,level_fl,from_time,until_time,contrail_km_avoided\nW1,CCC3,340,2031-03-04T06:10:00Z,2031-03-04T06:50:00Z,50\n").expect("written");
+    let args =
+        ["plan", arg(day.path()), "--out", arg(&plan), "--proposals", arg(&proposals), "--json"];
+    let planned = run(&args);
+    assert_eq!(planned.code, Some(0), "{}", planned.err);
+    let value: serde_json::Value = serde_json::from_str(&planned.out).expect("JSON");
+    assert_eq!(value["decisions"].as_array().map(Vec::len), Some(1));
+    assert_eq!(value["decisions"][0]["proposal"], "W1");
+}
+
+#[test]
+fn the_demo_runs_from_any_folder() {
+    let within = tempfile::tempdir().expect("a folder");
+    let output = program(&["demo", "--write", "day", "--out", "plan", "--json"])
+        .current_dir(within.path())
+        .output()
+        .expect("the program runs");
+    let run = told(output);
+    assert_eq!(run.code, Some(0), "{}", run.err);
+    let value: serde_json::Value = serde_json::from_str(&run.out).expect("JSON");
+    assert!(value["plan"]["granted"].as_u64().is_some_and(|granted| granted > 0));
+    assert!(within.path().join("day/flights.csv").is_file());
+    assert!(within.path().join("plan/plan.json").is_file());
+}
