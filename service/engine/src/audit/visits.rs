@@ -45,6 +45,9 @@ pub(super) struct SectorMap<'d> {
     cells: Vec<Vec<u32>>,
 }
 
+/// Nearer than this to the box around an outline, its edges are looked at, degrees.
+const NEAR_BOX_DEG: f64 = 0.05;
+
 const CELLS_EAST: usize = 361;
 const CELLS_NORTH: usize = 181;
 
@@ -194,6 +197,8 @@ impl Look<'_, '_> {
                 }
                 (true, false) => outside_s = outside_s.min(outline_s()),
                 (false, true) => outside_s = outside_s.min(band_s),
+                // Minutes out of the band need no look at the outline.
+                (false, false) if band_s > 120.0 => outside_s = outside_s.min(band_s),
                 (false, false) => outside_s = outside_s.min(band_s.max(outline_s())),
             }
         }
@@ -228,16 +233,19 @@ fn outline_distance_deg(volume: &Volume, place: LonLat) -> f64 {
     let distance = |lon_deg: f64| {
         let b = volume.polygon.bounds();
         let off = |value: f64, low: f64, high: f64| (low - value).max(value - high).max(0.0);
-        let to_box = off(lon_deg, b.west, b.east).hypot(off(place.lat_deg, b.south, b.north));
+        let (x, y) = (off(lon_deg, b.west, b.east), off(place.lat_deg, b.south, b.north));
+        let to_box2 = x * x + y * y;
         // Far away the box says enough; edges are worth their price only near it.
-        if to_box > 0.05 {
-            return to_box;
-        }
-        volume
-            .polygon
-            .edges()
-            .map(|(a, b)| segment_distance([lon_deg, place.lat_deg], a, b))
-            .fold(f64::INFINITY, f64::min)
+        let nearest2 = if to_box2 > NEAR_BOX_DEG * NEAR_BOX_DEG {
+            to_box2
+        } else {
+            volume
+                .polygon
+                .edges()
+                .map(|(a, b)| segment_distance2([lon_deg, place.lat_deg], a, b))
+                .fold(f64::INFINITY, f64::min)
+        };
+        nearest2.sqrt()
     };
     let here = distance(place.lon_deg);
     if place.lon_deg.abs() > 90.0 {
@@ -247,8 +255,8 @@ fn outline_distance_deg(volume: &Volume, place: LonLat) -> f64 {
     }
 }
 
-/// Distance of a point from a segment in the plane.
-fn segment_distance(p: [f64; 2], a: [f64; 2], b: [f64; 2]) -> f64 {
+/// Squared distance of a point from a segment in the plane.
+fn segment_distance2(p: [f64; 2], a: [f64; 2], b: [f64; 2]) -> f64 {
     let (dx, dy) = (b[0] - a[0], b[1] - a[1]);
     let length2 = dx * dx + dy * dy;
     let along = if length2 > 0.0 {
@@ -256,5 +264,6 @@ fn segment_distance(p: [f64; 2], a: [f64; 2], b: [f64; 2]) -> f64 {
     } else {
         0.0
     };
-    (p[0] - a[0] - along * dx).hypot(p[1] - a[1] - along * dy)
+    let (x, y) = (p[0] - a[0] - along * dx, p[1] - a[1] - along * dy);
+    x * x + y * y
 }

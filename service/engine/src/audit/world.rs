@@ -146,8 +146,8 @@ impl<'d> World<'d> {
 
     /// New losses of a flight flown so, against all others as the finished plan flies them.
     ///
-    /// `later_s` delays it beyond its plan; known is then a loss that the filed day has under any
-    /// of the same sampled delays.
+    /// `later_s` delays it beyond its plan; known is then every loss of a pair that the filed day
+    /// loses under any of the same sampled delays.
     pub(super) fn losses(
         &self,
         flight: FlightId,
@@ -187,7 +187,13 @@ impl<'d> World<'d> {
                 found.losses += 1;
                 let paths = [&own.path, &other.path];
                 let filed = || self.filed_spells(flight, near.flight, delays, lean.opposite());
-                if !is_known(&self.day.policy, &spell, paths, filed, lean) {
+                // Under time errors a pair that the filed day loses, too, is none of the plan's.
+                let is_known = if delays.later_s == 0.0 {
+                    is_known(&self.day.policy, &spell, paths, filed, lean)
+                } else {
+                    !filed().is_empty()
+                };
+                if !is_known {
                     found.new.push(NewLoss { other: near.flight, spell });
                 }
             }
