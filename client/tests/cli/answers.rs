@@ -33,7 +33,25 @@ NORTH,2031-03-04T00:00:00Z,2031-03-05T00:00:00Z,2
     let folder = arg(day.path());
     let checked = run(&["check", folder]);
     assert_eq!(checked.code, Some(0), "{}", checked.err);
-    expect![[""]].assert_eq(&checked.out);
+    expect![[r#"
+        Nowhere 2031-03-04: as filed, 1 overload and 1 loss of separation among 3 flights.
+        A day ahead, times are uncertain by minutes: losses at nominal times speak of the timetable, not of
+        the day.
+        No flight is moved here, so no new losses are expected.
+
+        Overloads
+         where  counted          when               count  limit
+         NORTH  entries an hour  03-04 05:20–07:00      3      2
+
+        Losses of separation at filed times
+         flight  other flight  closest at        NM  ft  sector
+         AAA1    BBB2          03-04 06:29:21  0.60   0  NORTH
+
+        A planning aid: it gives no clearances and replaces no controller, no flight-plan acceptance and no
+        local procedure. Minima and capacities are yours to set, under local rules and licensed practice.
+        Left out: water vapour, NOx and aerosol effects, speed control, lateral changes, climb performance
+        near the ceiling.
+    "#]].assert_eq(&checked.out);
     for (what, code) in [("loss", 1), ("overload", 1)] {
         assert_eq!(run(&["check", folder, "--fail-on", what]).code, Some(code));
     }
@@ -64,9 +82,50 @@ fn a_question_is_answered_yes_no_or_invalid() {
         assert_eq!(run.code, Some(0), "{}", run.err);
         run.out
     };
-    expect![[""]].assert_eq(&ask("CCC3", "FL340"));
-    expect![[""]].assert_eq(&ask("AAA1", "380"));
-    expect![[""]].assert_eq(&ask("AAA1", "430"));
+    expect![[r#"
+        yes: CCC3 at FL 340, against the filed day, breaks nothing.
+
+        What it would do
+          leaves its level at 03-04 06:10:00, starts to return at 03-04 06:49:38
+          net benefit: 0
+          contrails avoided: 0.0 km; extra fuel: 0.0 kg; arrival shifted by -21.6 s
+          new losses of separation: 0; expected new losses: 0.000
+        A day ahead, times are uncertain by minutes: losses at nominal times speak of the timetable, not of
+        the day.
+
+        A planning aid: it gives no clearances and replaces no controller, no flight-plan acceptance and no
+        local procedure. Minima and capacities are yours to set, under local rules and licensed practice.
+        Left out: water vapour, NOx and aerosol effects, speed control, lateral changes, climb performance
+        near the ceiling.
+    "#]].assert_eq(&ask("CCC3", "FL340"));
+    expect![[r#"
+        no: AAA1 at FL 380, against the filed day, is blocked.
+
+        Blocked by
+          a loss of separation with BBB2 at 03-04 06:11:00: 0.60 NM, 1000 ft
+
+        What it would do
+          leaves its level at 03-04 06:10:00, starts to return at 03-04 06:50:00
+          net benefit: 0
+          contrails avoided: 0.0 km; extra fuel: 0.0 kg; arrival shifted by 1.0 s
+          new losses of separation: 1; expected new losses: 0.073
+        A day ahead, times are uncertain by minutes: losses at nominal times speak of the timetable, not of
+        the day.
+
+        A planning aid: it gives no clearances and replaces no controller, no flight-plan acceptance and no
+        local procedure. Minima and capacities are yours to set, under local rules and licensed practice.
+        Left out: water vapour, NOx and aerosol effects, speed control, lateral changes, climb performance
+        near the ceiling.
+    "#]].assert_eq(&ask("AAA1", "380"));
+    expect![[r#"
+        invalid: AAA1 at FL 430, against the filed day, breaks a rule of level changes.
+        the aircraft's ceiling is FL 410.
+
+        A planning aid: it gives no clearances and replaces no controller, no flight-plan acceptance and no
+        local procedure. Minima and capacities are yours to set, under local rules and licensed practice.
+        Left out: water vapour, NOx and aerosol effects, speed control, lateral changes, climb performance
+        near the ceiling.
+    "#]].assert_eq(&ask("AAA1", "430"));
 }
 
 #[test]

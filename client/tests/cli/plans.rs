@@ -12,7 +12,31 @@ fn a_plan_is_written_holds_in_the_audit_and_can_be_asked_beside() {
     let (folder, out) = (arg(day.path()), arg(&plan));
     let planned = run(&["plan", folder, "--out", out]);
     assert_eq!(planned.code, Some(0), "{}", planned.err);
-    expect![[""]].assert_eq(&planned.out.replace(out, "PLAN"));
+    expect![[r#"
+        Nowhere 2031-03-04: 1 of 2 proposals granted, proven to be the best there is.
+        Net benefit 3.771e13 J (proven bound 3.771e13 J); 100.0 km of contrails avoided; 20.0 kg of extra
+        fuel.
+        Granted as asked 1, amended 0, refused 1, invalid 0.
+        New losses of separation: 0; filed losses removed: 0; expected new losses: 0.000.
+        A day ahead, times are uncertain by minutes: losses at nominal times speak of the timetable, not of
+        the day.
+        Refusals by reason (one may have several): separation 1.
+
+        Granted
+         proposal  flight  option  level   leaves          returns         km avoided  extra kg  shift s
+         P2        CCC3    1       FL 340  03-04 06:10:00  03-04 06:49:38       100.0      20.0    -21.6
+
+        Refused
+         proposal  flight  why not                                                             what would make room
+         P1        AAA1    a loss of separation with BBB2 at 03-04 06:11:00: 0.60 NM, 1000 ft
+
+        Written to PLAN
+
+        A planning aid: it gives no clearances and replaces no controller, no flight-plan acceptance and no
+        local procedure. Minima and capacities are yours to set, under local rules and licensed practice.
+        Left out: water vapour, NOx and aerosol effects, speed control, lateral changes, climb performance
+        near the ceiling.
+    "#]].assert_eq(&planned.out.replace(out, "PLAN"));
 
     let audited = run(&["audit", folder, out]);
     assert_eq!(audited.code, Some(0), "{}{}", audited.out, audited.err);
