@@ -29,9 +29,9 @@ struct Args {
     /// Number of proposals, one a flight.
     #[arg(long, default_value_t = 1000)]
     proposals: usize,
-    /// Most options of a proposal.
-    #[arg(long, default_value_t = 3)]
-    options: usize,
+    /// Most options of a proposal [default: 3 for us2001, 1 for nyc2013].
+    #[arg(long)]
+    options: Option<usize>,
     /// Seed of everything that is drawn.
     #[arg(long, default_value_t = 1)]
     seed: u64,
@@ -51,7 +51,7 @@ fn main() -> ExitCode {
         flights: args.flights,
         airports: args.airports,
         proposals: args.proposals,
-        options: args.options,
+        options: args.options.unwrap_or(Options::of(args.source).options),
         seed: args.seed,
         points: if args.parquet { PointsFormat::Parquet } else { PointsFormat::Csv },
     };

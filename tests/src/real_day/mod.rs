@@ -63,7 +63,9 @@ pub enum PointsFormat {
 }
 
 impl Options {
-    /// The date of the extract of a source, 1 000 proposals of up to three options.
+    /// The date of the extract of a source and 1 000 proposals: of up to three options for the
+    /// whole country; of one for the single city, whose thin traffic leaves room for nearly every
+    /// proposal that has a second choice.
     #[must_use]
     pub fn of(source: Source) -> Self {
         Self {
@@ -71,7 +73,10 @@ impl Options {
             flights: None,
             airports: None,
             proposals: 1000,
-            options: 3,
+            options: match source {
+                Source::Us2001 => 3,
+                Source::Nyc2013 => 1,
+            },
             seed: 1,
             points: PointsFormat::Csv,
         }
