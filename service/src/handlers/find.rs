@@ -196,6 +196,10 @@ fn run(
                 ),
             }
         }
+        PlanError::Unheeded { key } => ServiceError::Precondition {
+            subject: format!("policy key `{key}`"),
+            problem: "plans do not heed it yet; leave it at its default".to_owned(),
+        },
         defect @ (PlanError::FailedAudit(_) | PlanError::Model(_)) => {
             tracing::error!(?defect, "the search failed");
             ServiceError::Internal

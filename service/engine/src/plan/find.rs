@@ -5,6 +5,7 @@ use super::options::TooManyCombinations;
 use super::problem::Problem;
 use crate::answer::{Plans, Stopped};
 use crate::audit::{AuditReport, PlanUnderAudit, audit};
+use crate::day::{Policy, SeparationRule};
 use crate::search::{self, Index, RankOptions, SolveOptions, State, choice, rank};
 use crate::traffic::Traffic;
 
@@ -68,6 +69,12 @@ pub enum PlanError {
     /// The options of a flight combine in too many ways.
     #[error(transparent)]
     TooManyCombinations(#[from] TooManyCombinations),
+    /// The policy asks for what plans do not heed yet: better no plan than one that ignores it.
+    #[error("plans do not heed the policy key `{key}` yet")]
+    Unheeded {
+        /// The key.
+        key: &'static str,
+    },
     /// The audit found fault with a plan: a defect of this program. The plan is not handed out.
     #[error("the audit found {} faults with a plan", .0.findings.len())]
     FailedAudit(Box<AuditReport>),
@@ -79,12 +86,16 @@ pub enum PlanError {
 /// Finds the best plans of a day, best first.
 ///
 /// # Errors
-/// A flight's options combine in too many ways; or a defect of this program is found out.
+/// A flight's options combine in too many ways; the policy asks for what is not offered yet; or a
+/// defect of this program is found out.
 pub fn find(
     traffic: &Traffic,
     options: &FindOptions,
     watch: Watch<'_>,
 ) -> Result<Plans, PlanError> {
+    if let Some(key) = unheeded(&traffic.day.policy) {
+        return Err(PlanError::Unheeded { key });
+    }
     let problem = Problem::new(traffic)?;
     let amount = |count| problem.quantum.amount(count);
     let progress = |p: search::Progress| {
@@ -126,6 +137,19 @@ pub fn find(
         Some(search::Stopped::Work | search::Stopped::Infeasible) | None => Stopped::Work,
     };
     Ok(Plans { plans, bound, stopped })
+}
+
+/// A key of the policy that would change plans but is not heeded yet.
+fn unheeded(policy: &Policy) -> Option<&'static str> {
+    if policy.separation != SeparationRule::Nominal {
+        Some("separation")
+    } else if policy.min_grant_rate_per_operator.is_some() {
+        Some("min_grant_rate_per_operator")
+    } else if policy.max_share_per_operator.is_some() {
+        Some("max_share_per_operator")
+    } else {
+        None
+    }
 }
 
 /// Takes away grants that gain nothing, where the plan stays feasible without them: an option whose
