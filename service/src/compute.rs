@@ -5,12 +5,12 @@
 //! so that long searches can't starve them.
 
 use std::panic::{AssertUnwindSafe, catch_unwind};
-use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, AtomicUsize, Ordering};
+use std::sync::{Arc, Mutex, PoisonError};
 use std::time::Instant;
 
 use rimeshift_engine::answer::Stopped;
-use tokio::sync::{Semaphore, oneshot};
+use tokio::sync::{OwnedSemaphorePermit, Semaphore, oneshot};
 
 use crate::error::ServiceError;
 use crate::settings::Settings;
@@ -32,12 +32,28 @@ pub(crate) enum Work {
     Ask,
 }
 
+/// A number of pools, one for each piece of work under way: in a shared one, work that waits for a
+/// part of itself could take up a long search meanwhile, and end only with it.
 #[derive(Debug)]
 struct Lane {
-    pool: rayon::ThreadPool,
-    under_way: Arc<Semaphore>,
+    places: Arc<Semaphore>,
+    free: Arc<Mutex<Vec<Arc<rayon::ThreadPool>>>>,
     waiting: AtomicUsize,
     most_waiting: usize,
+}
+
+/// A pool that is taken, given back when dropped.
+struct Place {
+    pool: Arc<rayon::ThreadPool>,
+    free: Arc<Mutex<Vec<Arc<rayon::ThreadPool>>>>,
+    _permit: OwnedSemaphorePermit,
+}
+
+impl Drop for Place {
+    fn drop(&mut self) {
+        // Before the permit, which is dropped after this.
+        self.free.lock().unwrap_or_else(PoisonError::into_inner).push(Arc::clone(&self.pool));
+    }
 }
 
 /// Says to running work whether, and why, it is to stop.
@@ -85,23 +101,15 @@ impl Compute {
     /// # Errors
     /// The system gives no threads.
     pub(crate) fn start(settings: &Settings) -> Result<Self, rayon::ThreadPoolBuildError> {
-        let lane = |name: &'static str, threads: usize, at_once: usize, most_waiting: usize| {
-            let pool = rayon::ThreadPoolBuilder::new()
-                .num_threads(threads.max(1))
-                .thread_name(move |i| format!("{name}-{i}"))
-                .build()?;
-            let under_way = Arc::new(Semaphore::new(at_once.clamp(1, Semaphore::MAX_PERMITS)));
-            Ok(Lane { pool, under_way, waiting: AtomicUsize::new(0), most_waiting })
-        };
-        let ask_threads = settings.ask_threads.max(1);
+        let ask_lanes = settings.ask_threads.max(1);
         Ok(Self {
-            jobs: lane(
+            jobs: Lane::start(
                 "job",
+                settings.max_jobs.max(1),
                 settings.search_threads,
-                settings.max_jobs,
                 settings.max_waiting_jobs,
             )?,
-            asks: lane("ask", ask_threads, ask_threads, usize::MAX)?,
+            asks: Lane::start("ask", ask_lanes, 1, usize::MAX)?,
             stopping: Arc::new(AtomicBool::new(false)),
         })
     }
@@ -122,7 +130,7 @@ impl Compute {
             Work::Job => &self.jobs,
             Work::Ask => &self.asks,
         };
-        let permit = lane.enter().await?;
+        let place = lane.enter().await?;
         let sign = StopSign {
             caller_gone: Arc::new(AtomicBool::new(false)),
             stopping: Arc::clone(&self.stopping),
@@ -131,9 +139,10 @@ impl Compute {
         let _guard = CallerGuard(Arc::clone(&sign.caller_gone));
         let (sender, receiver) = oneshot::channel();
         let span = tracing::Span::current();
-        lane.pool.spawn(move || {
+        let pool = Arc::clone(&place.pool);
+        pool.spawn(move || {
             let _entered = span.enter();
-            let _permit = permit;
+            let _place = place;
             if sign.caller_gone.load(Ordering::Relaxed) {
                 return;
             }
@@ -154,20 +163,46 @@ impl Compute {
 }
 
 impl Lane {
-    /// Waits for a place among the work under way.
-    async fn enter(&self) -> Result<tokio::sync::OwnedSemaphorePermit, ServiceError> {
+    fn start(
+        name: &'static str,
+        pools: usize,
+        threads: usize,
+        most_waiting: usize,
+    ) -> Result<Self, rayon::ThreadPoolBuildError> {
+        let pool = |p: usize| {
+            let named = rayon::ThreadPoolBuilder::new().num_threads(threads.max(1));
+            named.thread_name(move |t| format!("{name}-{p}-{t}")).build().map(Arc::new)
+        };
+        let free: Vec<_> = (0..pools).map(pool).collect::<Result<_, _>>()?;
+        Ok(Self {
+            places: Arc::new(Semaphore::new(free.len())),
+            free: Arc::new(Mutex::new(free)),
+            waiting: AtomicUsize::new(0),
+            most_waiting,
+        })
+    }
+
+    /// Waits for a pool.
+    async fn enter(&self) -> Result<Place, ServiceError> {
         let before = self.waiting.fetch_add(1, Ordering::Relaxed);
         let _waiting = Waiting(&self.waiting);
-        if let Ok(permit) = Arc::clone(&self.under_way).try_acquire_owned() {
-            return Ok(permit);
-        }
-        if before >= self.most_waiting {
-            return Err(ServiceError::Exhausted {
-                subject: "jobs",
-                problem: format!("{before} calls are waiting for work to be done; try again later"),
-            });
-        }
-        Arc::clone(&self.under_way).acquire_owned().await.map_err(|_| ServiceError::Cancelled)
+        let permit = match Arc::clone(&self.places).try_acquire_owned() {
+            Ok(permit) => permit,
+            Err(_) if before >= self.most_waiting => {
+                return Err(ServiceError::Exhausted {
+                    subject: "jobs",
+                    problem: format!("{before} calls wait for work to be done; try again later"),
+                });
+            }
+            Err(_) => {
+                let permit = Arc::clone(&self.places).acquire_owned().await;
+                permit.map_err(|_| ServiceError::Cancelled)?
+            }
+        };
+        // There are as many permits as pools.
+        let pool = self.free.lock().unwrap_or_else(PoisonError::into_inner).pop();
+        let pool = pool.ok_or(ServiceError::Internal)?;
+        Ok(Place { pool, free: Arc::clone(&self.free), _permit: permit })
     }
 }
 
@@ -217,6 +252,30 @@ mod tests {
         assert_eq!(compute.run(Work::Ask, None, |_| 1).await, Ok(1));
         caller.abort();
         assert_eq!(has_ended.await.unwrap(), Some(Stopped::Cancelled));
+    }
+
+    #[tokio::test(flavor = "multi_thread")]
+    async fn more_work_than_may_wait_is_refused() {
+        let compute = Arc::new(compute());
+        let (started, has_started) = oneshot::channel();
+        let (let_go, may_go) = std::sync::mpsc::channel::<()>();
+        let run = |job: Box<dyn FnOnce() + Send>| {
+            let compute = Arc::clone(&compute);
+            tokio::spawn(async move { compute.run(Work::Job, None, move |_| job()).await })
+        };
+        let first = run(Box::new(move || {
+            let _ = started.send(());
+            let _ = may_go.recv();
+        }));
+        has_started.await.unwrap();
+        let second = run(Box::new(|| ()));
+        while compute.jobs.waiting.load(Ordering::Relaxed) == 0 {
+            tokio::task::yield_now().await;
+        }
+        let third = run(Box::new(|| ())).await.unwrap();
+        assert!(matches!(third, Err(ServiceError::Exhausted { subject: "jobs", .. })));
+        let_go.send(()).unwrap();
+        assert_eq!((first.await.unwrap(), second.await.unwrap()), (Ok(()), Ok(())));
     }
 
     #[tokio::test]

@@ -50,7 +50,7 @@ struct Limits {
     /// Longest wait for the next message of a load, s [default: 60].
     #[arg(long)]
     load_idle_s: Option<u64>,
-    /// Threads for builds, checks, searches and audits [default: all processors].
+    /// Threads of each build, check, search or audit [default: as many as processors].
     #[arg(long)]
     search_threads: Option<usize>,
     /// Threads for single questions [default: half the processors].

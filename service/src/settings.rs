@@ -17,7 +17,7 @@ pub struct Settings {
     pub max_loads: usize,
     /// Longest wait for the next message of a stream of rows.
     pub load_idle: Duration,
-    /// Threads that build days, check, search and audit.
+    /// Threads of each build, check, search or audit.
     pub search_threads: usize,
     /// Threads that answer questions about one change, apart, so that a search can't starve them.
     pub ask_threads: usize,

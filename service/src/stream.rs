@@ -9,9 +9,21 @@ use tonic::{Status, Streaming};
 use crate::error::ServiceError;
 use crate::handlers::Api;
 
-/// What a row holds beside its bytes on the wire, roughly: decoded structs are larger than their
-/// encoding, and a stream of empty rows must not be free.
-const BYTES_PER_ROW: u64 = 32;
+/// Memory of a point and of any other row beside its bytes on the wire: decoded structs are larger
+/// than their encoding, and a stream of empty rows must not be free.
+const BYTES_PER_POINT: u64 = 64;
+const BYTES_PER_ROW: u64 = 320;
+
+/// What a message brings.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub(crate) struct Brought {
+    /// Points of profiles.
+    pub(crate) points: usize,
+    /// Other rows, and what is nested in them.
+    pub(crate) rows: usize,
+    /// Its length on the wire.
+    pub(crate) bytes: usize,
+}
 
 /// A stream of messages that bring rows.
 #[derive(Debug)]
@@ -56,13 +68,14 @@ impl<T> RowStream<T> {
         }
     }
 
-    /// Counts a message's rows and bytes against the limits.
-    pub(crate) fn count(&mut self, rows: usize, bytes: usize) -> Result<(), ServiceError> {
-        let rows = rows as u64;
-        self.rows = self.rows.saturating_add(rows);
+    /// Counts what a message brings against the limits.
+    pub(crate) fn count(&mut self, brought: Brought) -> Result<(), ServiceError> {
+        let (points, rows) = (brought.points as u64, brought.rows as u64);
+        self.rows = self.rows.saturating_add(points).saturating_add(rows);
         self.bytes = self
             .bytes
-            .saturating_add(bytes as u64)
+            .saturating_add(brought.bytes as u64)
+            .saturating_add(points.saturating_mul(BYTES_PER_POINT))
             .saturating_add(rows.saturating_mul(BYTES_PER_ROW));
         if self.rows > self.most_rows {
             return Err(ServiceError::Exhausted {

@@ -3,7 +3,6 @@
 use std::sync::Arc;
 use std::time::SystemTime;
 
-use prost::Message;
 use rimeshift_engine::day::{Day, DayParts, Defect, Policy, Warning};
 use rimeshift_proto::v1;
 use rimeshift_proto::v1::day_service_server::DayService;
@@ -21,7 +20,7 @@ use crate::shelf::{Replace, Shelf};
 use crate::stream::RowStream;
 use crate::wire::clock::{self, DayClock};
 use crate::wire::fields::Fields;
-use crate::wire::rows::{Receiving, row_count};
+use crate::wire::rows::{Receiving, brought};
 use crate::wire::{policy, to_wire};
 
 #[tonic::async_trait]
@@ -45,7 +44,7 @@ impl DayService for Api {
         while let Some(message) = stream.next().await? {
             match message.content {
                 Some(Content::Rows(rows)) => {
-                    stream.count(row_count(&rows), rows.encoded_len())?;
+                    stream.count(brought(&rows))?;
                     receiving.add(rows);
                 }
                 Some(Content::Header(_)) => return Err(second_header().into()),

@@ -83,15 +83,17 @@ impl Api {
         let ready = search.day.under(&search.policy, &self.compute).await?;
         let plans = self.find_reporting(&search, &ready, sender).await?;
         let records = records(&plans, &search, ready.day().policy.same_loss_s);
-        let kept = self.keep(&search, &plans, &records)?;
+        let kept = self.keep(&search, &plans, &records);
         tracing::info!(
             day = %search.day.name,
             stopped = ?plans.stopped,
             plans = plans.plans.len(),
             "plans found"
         );
-        send_plans(&search, ready.answers(), &plans, &records, &kept, sender).await;
-        Ok(())
+        // Plans that could not be kept are sent all the same, before the error that says so.
+        let names = kept.as_deref().unwrap_or_default();
+        send_plans(&search, ready.answers(), &plans, &records, names, sender).await;
+        kept.map(drop)
     }
 
     async fn find_reporting(
@@ -141,6 +143,7 @@ impl Api {
             })
             .collect();
         let names = kept.iter().map(|(name, _)| name.to_string()).collect();
+        self.still_held(&search.day)?;
         search.day.plans.put(kept, *replace)?;
         Ok(names)
     }

@@ -11,7 +11,7 @@ use std::sync::Arc;
 
 use crate::compute::Compute;
 use crate::days::LoadedDay;
-use crate::error::Kind;
+use crate::error::{Kind, ServiceError};
 use crate::names::DayName;
 use crate::settings::Settings;
 use crate::shelf::Shelf;
@@ -39,6 +39,18 @@ impl Api {
                 settings.max_loads.min(tokio::sync::Semaphore::MAX_PERMITS),
             )),
             settings: Arc::new(settings),
+        })
+    }
+
+    /// Whether a day is still the one of its name, so that a plan put under it can be found.
+    fn still_held(&self, day: &Arc<LoadedDay>) -> Result<(), ServiceError> {
+        let now = self.days.get(&day.name)?;
+        if Arc::ptr_eq(&now, day) {
+            return Ok(());
+        }
+        Err(ServiceError::Precondition {
+            subject: day.name.to_string(),
+            problem: "the day was replaced meanwhile; the plan is of the former one".to_owned(),
         })
     }
 }

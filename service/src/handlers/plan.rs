@@ -2,7 +2,6 @@
 
 use std::sync::Arc;
 
-use prost::Message;
 use rimeshift_engine::audit::audit;
 use rimeshift_engine::day::Policy;
 use rimeshift_proto::v1;
@@ -24,7 +23,7 @@ use crate::plans::{Counts, KeptPlan, PlanRecord};
 use crate::shelf::Replace;
 use crate::stream::RowStream;
 use crate::wire::fields::Fields;
-use crate::wire::plan_rows::{ReceivingPlan, row_count, stopped};
+use crate::wire::plan_rows::{ReceivingPlan, brought, stopped};
 use crate::wire::{finding, policy, to_wire};
 
 /// Messages that wait for a slow reader.
@@ -107,7 +106,7 @@ impl PlanService for Api {
         while let Some(message) = stream.next().await? {
             match message.content {
                 Some(Content::Rows(rows)) => {
-                    stream.count(row_count(&rows), rows.encoded_len())?;
+                    stream.count(brought(&rows))?;
                     receiving.add(rows);
                 }
                 Some(Content::Header(_)) => {
@@ -124,6 +123,7 @@ impl PlanService for Api {
             .map_err(ServiceError::bad_fields)?;
         record.counts = Counts::of_decisions(&claim.decisions);
         let plan = Arc::new(KeptPlan::new(name.clone(), policy, record, claim));
+        self.still_held(&day)?;
         day.plans.put(vec![(name, Arc::clone(&plan))], replace)?;
         let plan = to_wire::kept_plan(&plan, &day.sha256);
         Ok(Response::new(v1::LoadPlanResponse { plan: Some(plan) }))

@@ -1,5 +1,6 @@
 //! Plans as they come in, message after message, to what an audit judges.
 
+use prost::Message;
 use rimeshift_engine::answer::{
     Exchange, LoadMeasure, MovedProfile, ProfilePoint, Stopped, Verdict,
 };
@@ -13,17 +14,22 @@ use rimeshift_proto::v1;
 use super::clock::DayClock;
 use super::fields::Fields;
 use super::rows::{append_points, optional_time};
+use crate::stream::Brought;
 
-/// How many rows a message holds, points included.
-pub(crate) fn row_count(rows: &v1::PlanRows) -> usize {
+/// What a message brings.
+pub(crate) fn brought(rows: &v1::PlanRows) -> Brought {
     let points = |moved: &v1::FlightPoints| {
-        1 + moved.points.as_ref().map_or(0, |p| p.seconds_after_epoch.len())
+        moved.points.as_ref().map_or(0, |points| points.seconds_after_epoch.len())
     };
-    let decisions = rows.decisions.iter();
-    decisions.map(|d| 1 + d.stretches.len() + d.reasons.len()).sum::<usize>()
-        + rows.moved_points.iter().map(points).sum::<usize>()
-        + rows.loads.len()
-        + rows.losses.len()
+    let nested = |decision: &v1::Decision| decision.stretches.len() + decision.reasons.len();
+    Brought {
+        points: rows.moved_points.iter().map(points).sum(),
+        rows: rows.decisions.iter().map(|d| 1 + nested(d)).sum::<usize>()
+            + rows.moved_points.len()
+            + rows.loads.len()
+            + rows.losses.len(),
+        bytes: rows.encoded_len(),
+    }
 }
 
 /// A plan that is being received. Paths in its defects count rows over all messages.

@@ -2,6 +2,7 @@
 
 use std::collections::HashMap;
 
+use prost::Message;
 use prost_types::Timestamp;
 use rimeshift_engine::day::{
     AircraftParts, AirportCapacityParts, AirportParts, AlternativeParts, CapacityParts, Date,
@@ -12,6 +13,7 @@ use rimeshift_proto::v1;
 
 use super::clock::DayClock;
 use super::fields::Fields;
+use crate::stream::Brought;
 
 /// A day that is being received. Paths in its defects count rows over all messages.
 #[derive(Debug)]
@@ -27,18 +29,34 @@ pub(crate) struct Receiving {
     continued: usize,
 }
 
-/// How many rows a message holds, points included.
-pub(crate) fn row_count(rows: &v1::DayRows) -> usize {
+/// What a message brings.
+pub(crate) fn brought(rows: &v1::DayRows) -> Brought {
     let points = |points: Option<&v1::Points>| points.map_or(0, |p| p.seconds_after_epoch.len());
-    rows.sectors.len()
+    let volumes = |sector: &v1::Sector| {
+        let positions = |ring: &v1::Ring| 1 + ring.lon_deg.len();
+        let rings = |volume: &v1::Volume| 1 + volume.rings.iter().map(positions).sum::<usize>();
+        sector.volumes.iter().map(rings).sum::<usize>()
+    };
+    let options = |proposal: &v1::Proposal| {
+        proposal.options.iter().map(|option| 1 + option.stretches.len()).sum::<usize>()
+    };
+    let tables = rows.sectors.len()
         + rows.capacities.len()
         + rows.airports.len()
         + rows.airport_capacities.len()
         + rows.aircraft.len()
         + rows.fuel.len()
-        + rows.flights.iter().map(|f| 1 + points(f.points.as_ref())).sum::<usize>()
-        + rows.flight_points.iter().map(|f| 1 + points(f.points.as_ref())).sum::<usize>()
-        + rows.proposals.iter().map(|p| 1 + p.options.len()).sum::<usize>()
+        + rows.flights.len()
+        + rows.flight_points.len()
+        + rows.proposals.len();
+    Brought {
+        points: rows.flights.iter().map(|f| points(f.points.as_ref())).sum::<usize>()
+            + rows.flight_points.iter().map(|f| points(f.points.as_ref())).sum::<usize>(),
+        rows: tables
+            + rows.sectors.iter().map(volumes).sum::<usize>()
+            + rows.proposals.iter().map(options).sum::<usize>(),
+        bytes: rows.encoded_len(),
+    }
 }
 
 impl Receiving {

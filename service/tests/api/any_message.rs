@@ -2,9 +2,11 @@
 
 use proptest::prelude::*;
 use rimeshift_proto::v1;
+use rimeshift_proto::v1::plan_service_client::PlanServiceClient;
 use tonic::Code;
+use tonic::transport::Channel;
 
-use crate::support::{header, send, service, small};
+use crate::support::{header, load, send, service, small, small_day};
 
 fn number() -> impl Strategy<Value = f64> {
     prop_oneof![any::<f64>(), -200.0..200.0, Just(33_000.0), Just(f64::NAN), Just(f64::INFINITY)]
@@ -105,6 +107,138 @@ fn message() -> impl Strategy<Value = v1::LoadDayRequest> {
         });
     let content = prop_oneof![4 => rows().prop_map(Content::Rows), 1 => header];
     proptest::option::weighted(0.95, content).prop_map(|content| v1::LoadDayRequest { content })
+}
+
+prop_compose! {
+    fn change()(
+        known in any::<bool>(),
+        flight in name(),
+        stretches in prop::collection::vec((number(), time(), time()), 0..3),
+        figures in prop::collection::vec(number(), 5),
+    ) -> v1::Change {
+        let stretches = stretches.into_iter();
+        v1::Change {
+            flight: if known { "F1".to_owned() } else { flight },
+            stretches: stretches
+                .map(|(level_ft, from, until)| v1::Stretch { level_ft, from, until })
+                .collect(),
+            figures: Some(v1::OptionFigures {
+                contrail_km_avoided: Some(figures[0]),
+                ef_avoided_j: Some(figures[1]),
+                extra_fuel_kg: Some(figures[2]),
+                max_extra_fuel_kg: Some(figures[3]),
+                priority: Some(figures[4]),
+            }),
+        }
+    }
+}
+
+prop_compose! {
+    fn decision()(
+        proposal in prop_oneof![Just("P1"), Just("P2"), Just("P9")],
+        flight in prop_oneof![Just("F1"), Just("F2"), Just("F9")],
+        verdict in 0..6_i32,
+        option in proptest::option::of(0..3_u32),
+        stretches in prop::collection::vec((number(), time(), time(), time()), 0..3),
+        figures in prop::collection::vec(prop_oneof![-1e9..1e9, number()], 5),
+        drops in proptest::option::of(prop_oneof![Just("P3"), Just("P9")]),
+        limit in any::<bool>(),
+    ) -> v1::Decision {
+        let stretch = |(level_ft, from, until, planned)| v1::PlannedStretch {
+            stretch: Some(v1::Stretch { level_ft, from, until }),
+            planned_from: planned,
+            planned_until: planned,
+            near_fix: String::new(),
+        };
+        let kind = v1::constraint::Kind::NotWorthIt(v1::NotWorthItConstraint {});
+        let constraint = v1::Constraint { kind: limit.then_some(kind) };
+        v1::Decision {
+            proposal: proposal.to_owned(),
+            flight: flight.to_owned(),
+            verdict,
+            option,
+            stretches: stretches.into_iter().map(stretch).collect(),
+            net_benefit: figures[0],
+            contrail_km_avoided: figures[1],
+            extra_fuel_kg: figures[2],
+            arrival_shift_s: figures[3],
+            reasons: vec![v1::Reason { option: 1, constraint: Some(constraint) }],
+            exchange: drops.map(|name| v1::Exchange {
+                drops: vec![name.to_owned()],
+                objective_lost: figures[4],
+                proven: true,
+            }),
+        }
+    }
+}
+
+/// Runs a test against a service that holds the small day.
+fn with_small_day<F: Future<Output = ()>>(test: impl FnOnce(Channel, v1::Day) -> F) {
+    let runtime = tokio::runtime::Runtime::new().unwrap();
+    runtime.block_on(async {
+        let channel = service(small()).await;
+        let day = load(&channel, header("day"), vec![small_day()]).await.unwrap().day.unwrap();
+        test(channel, day).await;
+    });
+}
+
+proptest! {
+    #![proptest_config(ProptestConfig::with_cases(100))]
+
+    #[test]
+    fn no_question_makes_the_service_fail(changes in prop::collection::vec(change(), 1..4)) {
+        with_small_day(|channel, _| async move {
+            let mut client = PlanServiceClient::new(channel);
+            for change in changes {
+                let request =
+                    v1::AskChangeRequest { day: "days/day".into(), change: Some(change), ..Default::default() };
+                if let Err(status) = client.ask_change(request).await {
+                    assert_eq!(status.code(), Code::InvalidArgument, "{status}");
+                }
+            }
+        });
+    }
+
+    #[test]
+    fn no_plan_makes_the_service_fail(
+        decisions in prop::collection::vec(decision(), 0..4),
+        points in proptest::option::of(points()),
+        objective in number(),
+        question in change(),
+    ) {
+        with_small_day(|channel, day| async move {
+            use v1::load_plan_request::Content;
+            let origin = v1::PlanOrigin {
+                day_sha256: day.day_sha256,
+                stopped: v1::Stopped::Work.into(),
+                ..Default::default()
+            };
+            let header = v1::LoadPlanHeader {
+                parent: day.name.clone(),
+                plan_id: "odd".into(),
+                plan: Some(v1::Plan { origin: Some(origin), objective, ..Default::default() }),
+                ..Default::default()
+            };
+            let moved = v1::FlightPoints { flight: "F1".into(), points };
+            let rows = v1::PlanRows { decisions, moved_points: vec![moved], ..Default::default() };
+            let messages = [Content::Header(header), Content::Rows(rows)]
+                .map(|content| v1::LoadPlanRequest { content: Some(content) });
+            let mut client = PlanServiceClient::new(channel);
+            let plan = match client.load_plan(tokio_stream::iter(messages)).await {
+                Ok(loaded) => loaded.into_inner().plan.unwrap().name,
+                Err(status) => {
+                    assert_eq!(status.code(), Code::InvalidArgument, "{status}");
+                    return;
+                }
+            };
+            client.audit_plan(v1::AuditPlanRequest { name: plan.clone() }).await.unwrap();
+            let request = v1::AskChangeRequest { day: day.name, plan, change: Some(question) };
+            if let Err(status) = client.ask_change(request).await {
+                let told = [Code::InvalidArgument, Code::FailedPrecondition];
+                assert!(told.contains(&status.code()), "{status}");
+            }
+        });
+    }
 }
 
 proptest! {

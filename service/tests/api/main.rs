@@ -5,6 +5,7 @@
 mod any_message;
 mod days;
 mod plans;
+mod program;
 mod serving;
 mod support;
 mod traffic;
