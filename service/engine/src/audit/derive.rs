@@ -1,6 +1,6 @@
 //! A changed profile, from where its stretches lie: times of every place, step by step.
 //!
-//! In calm standard air a constant Mach number makes the ground speed of a cruise leg go as the
+//! In calm standard air a constant Mach number makes the ground speed of a level leg go as the
 //! speed of sound at the level flown over that at the level filed. Where the filed profile climbs
 //! or descends, and on legs without length, the filed speed stays.
 
@@ -30,16 +30,17 @@ pub(super) enum Way {
 
 /// Filed seconds passed in a second on a leg at a level.
 pub(super) fn haste(track: &Track, leg: usize, level_ft: f64) -> f64 {
-    if track.is_cruise(leg) && track.leg_length_m(leg) > 0.0 {
-        sound_ratio(level_ft, track.leg_levels_ft(leg).0)
+    let (from_ft, to_ft) = track.leg_levels_ft(leg);
+    if from_ft == to_ft && track.leg_length_m(leg) > 0.0 {
+        sound_ratio(level_ft, from_ft)
     } else {
         1.0
     }
 }
 
-/// A climb or descent at a steady rate, in equal steps of at most 1 000 ft, each flown with the
-/// ground speed of its middle level; where a leg ends inside a step, the step is divided there and
-/// each part has its own middle level.
+/// A climb or descent at a steady rate, in steps of 1 000 ft from the level left and a last one of
+/// what remains, each flown with the ground speed of its middle level; where a leg ends inside a
+/// step, the step is divided there and each part has its own middle level.
 ///
 /// Gives the filed time of its start, and its moves in the order of flight; `None` where the track
 /// ends before it. Backward, it is followed from its end to its start.
@@ -52,7 +53,16 @@ pub(super) fn transition(
 ) -> Option<(f64, Vec<Move>)> {
     let (from_ft, to_ft) = levels_ft;
     let rate_ftps = rate_fpm / 60.0;
-    let steps = ((to_ft - from_ft).abs() / STEP_FT - 1e-9).ceil().max(0.0) as u32;
+    let total_ft = (to_ft - from_ft).abs();
+    let steps = (total_ft / STEP_FT - 1e-9).ceil().max(0.0) as u32;
+    // Steps are counted in the order of flight, also where they are followed against it.
+    let border_ft = |passed: u32| {
+        let flown_ft = match way {
+            Way::Forward => f64::from(passed) * STEP_FT,
+            Way::Backward => total_ft - f64::from(steps - passed) * STEP_FT,
+        };
+        if passed == steps { to_ft } else { from_ft + (to_ft - from_ft).signum() * flown_ft }
+    };
     let mut moves = Vec::new();
     let mut filed_s = at_filed_s;
     let mut leg = match way {
@@ -60,8 +70,8 @@ pub(super) fn transition(
         Way::Backward => leg_before(track, at_filed_s),
     };
     for step in 0..steps {
-        let share = |n: u32| from_ft + (to_ft - from_ft) * f64::from(n) / f64::from(steps);
-        let (mut level_ft, end_ft) = (share(step), share(step + 1));
+        let start_ft = if step == 0 { from_ft } else { border_ft(step) };
+        let (mut level_ft, end_ft) = (start_ft, border_ft(step + 1));
         loop {
             let left_s = (end_ft - level_ft).abs() / rate_ftps;
             let passed = haste(track, leg, (level_ft + end_ft) / 2.0) * left_s;

@@ -137,3 +137,37 @@ fn several_stretches_and_proposals_add_up() {
     // The second proposal begins as much earlier as the first has gained.
     assert!((planned[1][0].0 - alone[0][0].0 - first_s).abs() < 2e-3);
 }
+
+#[test]
+fn steps_are_thousands_of_feet_from_the_level_left() {
+    let mut parts = simple();
+    parts.proposals[0].alternatives[0].stretches = vec![stretch(Some(20.0), Some(100.0), 370.0)];
+    parts.flights[0] = eastward("A", 0.0, 355.0);
+    let day = build(parts);
+    let (shift_s, planned) = shift_and_times(&day, &[(0, 1)]);
+    // Up 355 -> 365 -> 370, down 370 -> 360 -> 355; colder air above only up to the tropopause.
+    let k = |fl: f64| sound(fl.min(11_000.0 / 30.48), 355.0);
+    let up = 60.0 * k(360.0) + 30.0 * k(367.5);
+    let down = 60.0 * k(365.0) + 30.0 * k(357.5);
+    let hold_filed_s = 80.0 * 60.0 - up;
+    let hold_s = hold_filed_s / k(370.0);
+    assert!((planned[0][0].1 - (1200.0 + 90.0 + hold_s)).abs() < 1e-3);
+    let expected_s = (90.0 - up) + (hold_s - hold_filed_s) + (90.0 - down);
+    assert!((shift_s - expected_s).abs() < 1e-3, "{shift_s} {expected_s}");
+}
+
+#[test]
+fn a_return_until_the_descent_counts_its_steps_from_the_level_left() {
+    let mut parts = simple();
+    parts.proposals[0].alternatives[0].stretches = vec![stretch(Some(20.0), None, 370.0)];
+    parts.flights[0] = eastward("A", 0.0, 355.0);
+    let day = build(parts);
+    let (shift_s, planned) = shift_and_times(&day, &[(0, 1)]);
+    let k = |fl: f64| sound(fl.min(11_000.0 / 30.48), 355.0);
+    let up = 60.0 * k(360.0) + 30.0 * k(367.5);
+    let down = 60.0 * k(365.0) + 30.0 * k(357.5);
+    // At the filed level again at minute 110.
+    let hold_s = (90.0 * 60.0 - up - down) / k(370.0);
+    assert!((planned[0][0].1 - (1200.0 + 90.0 + hold_s)).abs() < 1e-3);
+    assert!((shift_s - (90.0 + hold_s + 90.0 - 5400.0)).abs() < 1e-3);
+}
