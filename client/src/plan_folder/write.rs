@@ -83,27 +83,39 @@ fn write_beside(folder: &Path, found: &FoundPlans) -> io::Result<()> {
     let unfinished = beside("unfinished")?;
     write_files(unfinished.path(), found)?;
     File::open(unfinished.path())?.sync_all()?;
-    // A folder can't be renamed over one that is not empty: the old plan is first set aside.
+    make_readable(unfinished.path())?;
     let holds_a_plan = fs::read_dir(folder).is_ok_and(|mut entries| entries.next().is_some());
-    let aside = if holds_a_plan {
+    if !holds_a_plan {
+        fs::rename(unfinished.path(), folder)?;
+        // Nothing is left there to be removed.
+        let _: PathBuf = unfinished.keep();
+    } else if !swap(unfinished.path(), folder) {
+        // A folder can't be renamed over one that is not empty: the old plan is first set aside.
         let aside = beside("replaced")?;
-        fs::rename(folder, aside.path().join("plan"))?;
-        Some(aside)
-    } else {
-        None
-    };
-    let renamed = fs::rename(unfinished.path(), folder);
-    match (&aside, &renamed) {
-        (Some(aside), Err(_)) => fs::rename(aside.path().join("plan"), folder)?,
-        (_, Ok(())) => {
-            // Nothing is left there to be removed.
-            let _: PathBuf = unfinished.keep();
+        let old = aside.path().join("plan");
+        fs::rename(folder, &old)?;
+        if let Err(error) = fs::rename(unfinished.path(), folder) {
+            fs::rename(&old, folder)?;
+            return Err(error);
         }
-        _ => {}
+        let _: PathBuf = unfinished.keep();
     }
-    renamed?;
-    make_readable(folder)?;
     File::open(parent)?.sync_all()
+}
+
+/// Puts one folder in the place of another and that one in its place, in one step, so that there is
+/// a whole plan at every moment; `false` where the system can't do that.
+fn swap(one: &Path, other: &Path) -> bool {
+    #[cfg(target_os = "linux")]
+    {
+        use rustix::fs::{CWD, RenameFlags, renameat_with};
+        renameat_with(CWD, one, CWD, other, RenameFlags::EXCHANGE).is_ok()
+    }
+    #[cfg(not(target_os = "linux"))]
+    {
+        let _ = (one, other);
+        false
+    }
 }
 
 /// Temporary folders are for their owner alone; a plan is a folder like any other.

@@ -1,7 +1,7 @@
 //! The report of a check: what a day holds as filed.
 
 use super::cautions;
-use super::figures::{count, counted, date, period, rfc3339, second};
+use super::figures::{count, counted, date, lost_ft, lost_nm, period, rfc3339, second};
 use super::names;
 use super::sheet::{Sheet, first_rows, numbers, words};
 use crate::screen::Layout;
@@ -58,8 +58,8 @@ impl CheckReport {
                 loss.first_flight.clone(),
                 loss.second_flight.clone(),
                 second(loss.closest_time.as_ref()),
-                format!("{:.2}", loss.horizontal_nm),
-                format!("{:.0}", loss.vertical_ft),
+                lost_nm(loss.horizontal_nm),
+                lost_ft(loss.vertical_ft),
                 loss.sector.clone(),
             ]
         });

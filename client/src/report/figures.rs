@@ -28,6 +28,16 @@ pub(crate) fn tenth(value: f64) -> String {
     if text == "-0.0" { "0.0".to_owned() } else { text }
 }
 
+/// A horizontal distance of a loss, NM, rounded down: one below its minimum must not read as kept.
+pub(crate) fn lost_nm(horizontal_nm: f64) -> String {
+    format!("{:.2}", (horizontal_nm * 100.0).floor() / 100.0)
+}
+
+/// A vertical distance of a loss, feet, rounded down like [`lost_nm`].
+pub(crate) fn lost_ft(vertical_ft: f64) -> String {
+    format!("{:.0}", vertical_ft.floor())
+}
+
 /// A flight level from feet.
 pub(crate) fn flight_level(level_ft: f64) -> String {
     format!("FL {}", level_ft / 100.0)

@@ -188,11 +188,11 @@ pub(crate) fn constraint(constraint: &Constraint) -> String {
             figures::count(load.limit)
         ),
         Some(Kind::Separation(loss)) => format!(
-            "a loss of separation with {} at {}: {:.2} NM, {:.0} ft",
+            "a loss of separation with {} at {}: {} NM, {} ft",
             loss.other_flight,
             figures::second(loss.time.as_ref()),
-            loss.horizontal_nm,
-            loss.vertical_ft
+            figures::lost_nm(loss.horizontal_nm),
+            figures::lost_ft(loss.vertical_ft)
         ),
         Some(Kind::SeparationRisk(risk)) => format!(
             "the probability of a loss with {}: {:.3} where {:.3} is allowed",

@@ -3,6 +3,8 @@
 use crate::support::{arg, bytes_in, day_with, program, run, told};
 use expect_test::expect;
 use std::fs;
+use std::process::Stdio;
+use std::time::Instant;
 
 #[test]
 fn a_plan_is_written_holds_in_the_audit_and_can_be_asked_beside() {
@@ -118,4 +120,33 @@ fn the_demo_runs_from_any_folder() {
     assert!(value["plan"]["granted"].as_u64().is_some_and(|granted| granted > 0));
     assert!(within.path().join("day/flights.csv").is_file());
     assert!(within.path().join("plan/plan.json").is_file());
+}
+
+/// Killed at any moment while it replaces a plan, the program leaves a whole plan: the old or the
+/// new one.
+#[test]
+fn killed_while_it_writes_it_leaves_a_whole_plan() {
+    let day = day_with("");
+    let within = tempfile::tempdir().expect("a folder");
+    let plan = within.path().join("plan");
+    let (folder, out) = (arg(day.path()), arg(&plan));
+    let began = Instant::now();
+    assert_eq!(run(&["plan", folder, "--out", out]).code, Some(0));
+    let whole = began.elapsed();
+    let kept = bytes_in(&plan);
+    // From far too early to just finished, densest at the end, where the writing is.
+    for round in 0..40 {
+        let share = 1.1 * (1.0 - (f64::from(round) / 39.0).powi(2));
+        let mut child = program(&["plan", folder, "--out", out, "--replace"])
+            .stdout(Stdio::null())
+            .stderr(Stdio::null())
+            .spawn()
+            .expect("the program runs");
+        std::thread::sleep(whole.mul_f64(share));
+        // It may have ended by itself.
+        let _ = child.kill();
+        child.wait().expect("an end");
+        assert_eq!(bytes_in(&plan), kept, "round {round}");
+    }
+    assert_eq!(run(&["audit", folder, out]).code, Some(0));
 }

@@ -203,6 +203,7 @@ fn run(
             subject: format!("policy key `{key}`"),
             problem: "plans do not heed it yet; leave it at its default".to_owned(),
         },
+        PlanError::Cancelled => ServiceError::Cancelled,
         defect @ (PlanError::FailedAudit(_) | PlanError::Model(_)) => {
             tracing::error!(?defect, "the search failed");
             ServiceError::Internal

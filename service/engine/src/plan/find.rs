@@ -55,6 +55,16 @@ impl std::fmt::Debug for Watch<'_> {
     }
 }
 
+impl Watch<'_> {
+    /// Looked at between the steps that make a plan: nobody wants one any more.
+    pub(super) fn wanted(&self) -> Result<(), PlanError> {
+        match (self.stop)() {
+            Some(Stopped::Cancelled) => Err(PlanError::Cancelled),
+            _ => Ok(()),
+        }
+    }
+}
+
 impl Watch<'static> {
     /// Never stops and listens to nothing.
     #[must_use]
@@ -81,6 +91,9 @@ pub enum PlanError {
     /// The search could not use the model: a defect of this program.
     #[error("the search could not use the model: {0}")]
     Model(search::Defect),
+    /// The caller has gone before there was a plan.
+    #[error("the caller has gone")]
+    Cancelled,
 }
 
 /// Finds the best plans of a day, best first.
@@ -96,7 +109,8 @@ pub fn find(
     if let Some(key) = unheeded(&traffic.day.policy) {
         return Err(PlanError::Unheeded { key });
     }
-    let problem = Problem::new(traffic)?;
+    let problem = Problem::new(traffic, watch)?;
+    watch.wanted()?;
     let amount = |count| problem.quantum.amount(count);
     let progress = |p: search::Progress| {
         let (objective, bound) = (amount(p.objective), amount(p.bound));
@@ -121,7 +135,9 @@ pub fn find(
     let mut plans = Vec::with_capacity(solutions.len());
     for solution in &solutions {
         let choices = without_idle_grants(&problem, &index, &solution.choices);
+        watch.wanted()?;
         let plan = plan_of(traffic, &problem, &index, &choices);
+        watch.wanted()?;
         let report =
             audit(&traffic.day, &PlanUnderAudit::of(&plan, bound.filter(|_| plans.is_empty())));
         if !report.passed() {

@@ -10,9 +10,8 @@ use std::collections::BTreeMap;
 
 use rayon::prelude::*;
 
-use super::options::{
-    Asking, Combination, Grant, Judged, TooManyCombinations, combine_all, judge_all,
-};
+use super::find::{PlanError, Watch};
+use super::options::{Asking, Combination, Grant, Judged, combine_all, judge_all};
 use super::quantum::Quantum;
 use crate::change::Change;
 use crate::ids::{FlightId, IdVec, ProposalId};
@@ -33,7 +32,7 @@ pub(super) struct Problem {
 }
 
 impl Problem {
-    pub(super) fn new(traffic: &Traffic) -> Result<Self, TooManyCombinations> {
+    pub(super) fn new(traffic: &Traffic, watch: Watch<'_>) -> Result<Self, PlanError> {
         let day = &traffic.day;
         let forbidden = |flight, change: &Change| traffic.forbidden(flight, change);
         let judged = judge_all(day, &traffic.tracks, &forbidden);
@@ -41,13 +40,16 @@ impl Problem {
         let group_of: BTreeMap<FlightId, u32> =
             (0u32..).zip(&asking).map(|(group, asking)| (asking.flight, group)).collect();
         let quantum = Quantum::for_total(&day.policy, total_worth(&judged, &asking));
+        watch.wanted()?;
         let differences = all_differences(traffic, &asking);
+        watch.wanted()?;
         let mut model = Model {
             groups: asking.iter().map(|a| group(a, &judged, quantum)).collect(),
             clashes: Vec::new(),
             rows: rows(traffic, &differences),
             any_ofs: any_ofs(traffic, &differences),
         };
+        watch.wanted()?;
         add_clashes(traffic, &asking, &group_of, &mut model);
         if let Some(most) = day.policy.max_moved_flights {
             let moved = |(g, group): (u32, &Group)| {
