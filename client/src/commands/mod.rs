@@ -15,6 +15,7 @@ use crate::exit::{Answered, Failure};
 use crate::screen::Screen;
 use crate::tables::findings::Problem;
 use session::Session;
+use tracing_subscriber::EnvFilter;
 
 /// Runs the command asked for.
 ///
@@ -23,8 +24,12 @@ use session::Session;
 pub(crate) fn run(args: Args, screen: &Screen) -> Result<Answered, Failure> {
     match args.command {
         Command::Completions(args) => completions::run(&args, screen),
-        Command::Serve(args) => block_on(serve::run(&args, screen)),
+        Command::Serve(args) => block_on(async {
+            log("info");
+            serve::run(&args, screen).await
+        }),
         command => block_on(async {
+            log("error");
             let session = Session::open(args.global.server.as_deref(), screen).await?;
             match command {
                 Command::Demo(args) => demo::run(&args, &session).await,
@@ -37,6 +42,15 @@ pub(crate) fn run(args: Args, screen: &Screen) -> Result<Answered, Failure> {
             }
         }),
     }
+}
+
+/// Writes to standard error what the service in this process logs: as `RUST_LOG` says, or from a
+/// level on.
+fn log(otherwise: &str) {
+    let filter = EnvFilter::try_from_default_env().unwrap_or_else(|_| EnvFilter::new(otherwise));
+    let log = tracing_subscriber::fmt().with_env_filter(filter).with_writer(std::io::stderr);
+    // Whoever has set a log up before has decided where it goes.
+    let _ = log.try_init();
 }
 
 fn block_on(command: impl Future<Output = Result<Answered, Failure>>) -> Result<Answered, Failure> {

@@ -7,7 +7,6 @@ use rimeshift_service::{Settings, serve};
 use std::net::SocketAddr;
 use tokio::net::TcpListener;
 use tonic::transport::server::TcpIncoming;
-use tracing_subscriber::EnvFilter;
 
 /// Options of `serve`.
 #[derive(Debug, clap::Args)]
@@ -34,8 +33,6 @@ pub(crate) async fn run(args: &ServeArgs, screen: &Screen) -> Result<Answered, F
             ),
         ));
     }
-    let filter = EnvFilter::try_from_default_env().unwrap_or_else(|_| EnvFilter::new("info"));
-    tracing_subscriber::fmt().with_env_filter(filter).with_writer(std::io::stderr).init();
     let listener = TcpListener::bind(args.listen).await.map_err(|error| {
         Failure::input("--listen", Problem::new(format!("{}: {error}", args.listen)))
     })?;

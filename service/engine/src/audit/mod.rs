@@ -75,6 +75,7 @@ pub fn audit(day: &Day, plan: &PlanUnderAudit) -> AuditReport {
     let combined = decisions::combined(day, &tracks, &decided.grants, &mut report.findings);
     let paths = combined.iter().map(|(&id, one)| (id, one.path.clone())).collect();
     let world = World::new(day, &tracks, decided.grants.clone(), paths);
+    tracing::debug!("audit: days flown");
 
     decisions::judge_forbidden_places(&world, &mut report.findings);
     let (findings, derived) = decisions::judge_validity(&world, &decided);
@@ -86,6 +87,7 @@ pub fn audit(day: &Day, plan: &PlanUnderAudit) -> AuditReport {
     report.checked.visits = world.filed.iter().map(|f| f.raw.len() as u64).sum();
 
     judge_separation(&world, &mut report);
+    tracing::debug!("audit: separation judged");
     judge_load(&world, &mut report);
     report.findings.extend(limits::judge_limits(&world));
     let AuditReport { findings, checked, not_judged } = &mut report;
@@ -93,6 +95,7 @@ pub fn audit(day: &Day, plan: &PlanUnderAudit) -> AuditReport {
     if let Some(written) = &plan.written {
         checked.written_points = written::judge_written(&world, written, findings);
     }
+    tracing::debug!("audit: load and figures judged");
     findings.extend(maximal::judge_reasons(&world, &decided));
     if day.policy.min_grant_rate_per_operator.is_some() {
         not_judged.push(NotJudged::GrantRate);

@@ -9,6 +9,9 @@ use crate::day::{Policy, SeparationRule};
 use crate::search::{self, Index, RankOptions, SolveOptions, State, choice, rank};
 use crate::traffic::Traffic;
 
+/// Most findings against one plan that are logged: a mistake shows in the first few.
+const MOST_LOGGED: usize = 10;
+
 /// How to search for plans.
 #[derive(Debug, Clone, PartialEq)]
 pub struct FindOptions {
@@ -110,6 +113,12 @@ pub fn find(
         return Err(PlanError::Unheeded { key });
     }
     let problem = Problem::new(traffic, watch)?;
+    tracing::debug!(
+        groups = problem.model.groups.len(),
+        rows = problem.model.rows.len(),
+        clashes = problem.model.clashes.len(),
+        "model made"
+    );
     watch.wanted()?;
     let amount = |count| problem.quantum.amount(count);
     let progress = |p: search::Progress| {
@@ -129,6 +138,7 @@ pub fn find(
     };
     let search_watch = search::Watch { stop: &stop, progress: &progress };
     let solutions = rank(&problem.model, &rank_options, search_watch).map_err(PlanError::Model)?;
+    tracing::debug!("searched");
     let index = Index::new(&problem.model).map_err(PlanError::Model)?;
     let best = solutions.first();
     let bound = best.and_then(|s| s.bound).map(amount);
@@ -138,10 +148,13 @@ pub fn find(
         watch.wanted()?;
         let plan = plan_of(traffic, &problem, &index, &choices);
         watch.wanted()?;
+        tracing::debug!("plan made");
         let report =
             audit(&traffic.day, &PlanUnderAudit::of(&plan, bound.filter(|_| plans.is_empty())));
+        tracing::debug!("plan audited");
         if !report.passed() {
-            tracing::error!(findings = ?report.findings, "a plan failed its audit");
+            let some = &report.findings[..report.findings.len().min(MOST_LOGGED)];
+            tracing::error!(findings = report.findings.len(), ?some, "a plan failed its audit");
             return Err(PlanError::FailedAudit(Box::new(report)));
         }
         plans.push(plan);

@@ -40,8 +40,10 @@ impl Problem {
         let group_of: BTreeMap<FlightId, u32> =
             (0u32..).zip(&asking).map(|(group, asking)| (asking.flight, group)).collect();
         let quantum = Quantum::for_total(&day.policy, total_worth(&judged, &asking));
+        tracing::debug!(flights = asking.len(), "changes made");
         watch.wanted()?;
         let differences = all_differences(traffic, &asking);
+        tracing::debug!("changes counted");
         watch.wanted()?;
         let mut model = Model {
             groups: asking.iter().map(|a| group(a, &judged, quantum)).collect(),
@@ -50,6 +52,7 @@ impl Problem {
             any_ofs: any_ofs(traffic, &differences),
         };
         watch.wanted()?;
+        tracing::debug!("rows made");
         add_clashes(traffic, &asking, &group_of, &mut model);
         if let Some(most) = day.policy.max_moved_flights {
             let moved = |(g, group): (u32, &Group)| {
