@@ -1,4 +1,4 @@
-//! Losses of separation between two flown profiles: by looking, at most a quarter of a second
+//! Losses of separation between two flown profiles: by looking, at most a fiftieth of a second
 //! apart wherever a loss may be, and bisecting its ends.
 //!
 //! Between looks that lie further apart nothing can happen: the two can't come within the minimum
@@ -8,8 +8,8 @@
 use super::path::{Path, State};
 use super::stretches::RVSM_FT;
 use super::tolerances::{
-    LEVEL_FT, Lean, PAIR_STEP_S, SEPARATION_AGAINST_M, SEPARATION_M, TIME_S, VERTICAL_AGAINST_FT,
-    VERTICAL_FT,
+    LEVEL_FT, Lean, ONSET_STEP_S, PAIR_STEP_S, SEPARATION_AGAINST_M, SEPARATION_M, TIME_S,
+    VERTICAL_AGAINST_FT, VERTICAL_FT,
 };
 use super::track::{geodesic_distance_m, ground_distance_m};
 use super::visits::Visit;
@@ -166,7 +166,8 @@ impl<'w, 'd> Pair<'w, 'd> {
         let mut look = self.look(time_s);
         let mut begun_s = look.lost.then_some(time_s);
         while time_s < until_s {
-            let next_s = (time_s + look.quiet_s.max(PAIR_STEP_S)).min(until_s);
+            let shortest_s = if look.lost { PAIR_STEP_S } else { ONSET_STEP_S };
+            let next_s = (time_s + look.quiet_s.max(shortest_s)).min(until_s);
             let next = self.look(next_s);
             if next.lost != look.lost {
                 let change_s = self.bisect(time_s, next_s, look.lost);

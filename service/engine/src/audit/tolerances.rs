@@ -38,9 +38,13 @@ pub(super) const SEPARATION_AGAINST_M: f64 = 1.0;
 pub(super) const VERTICAL_FT: f64 = SEPARATION_M / METRES_PER_FOOT;
 /// [`SEPARATION_AGAINST_M`] as a difference of level, feet.
 pub(super) const VERTICAL_AGAINST_FT: f64 = SEPARATION_AGAINST_M / METRES_PER_FOOT;
-/// Longest step between two looks at a pair that may be too close, seconds: no loss that lasts
-/// longer is overlooked.
+/// Step between two looks at a pair that is too close, seconds: losses with a shorter time between
+/// them may be taken for one.
 pub(super) const PAIR_STEP_S: f64 = 0.25;
+/// Shortest step between two looks at a pair that may come too close, seconds: no loss that lasts
+/// longer is overlooked. Climbing and descending flights cross each other's minima in a tenth of a
+/// second, and by such a loss as filed one in the plan may be known.
+pub(super) const ONSET_STEP_S: f64 = 0.02;
 /// Shortest step between two looks at a flight beside a sector's edge, seconds: no visit that
 /// lasts longer is overlooked.
 pub(super) const EDGE_STEP_S: f64 = 0.05;

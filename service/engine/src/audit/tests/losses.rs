@@ -48,6 +48,35 @@ fn two_straight_tracks_that_cross_at_a_right_angle() {
 }
 
 #[test]
+fn a_loss_of_a_tenth_of_a_second_is_seen() {
+    let level = build(crossing(350.0, 350.0));
+    let tracks = tracks(&level);
+    let speed = |t: &Track| t.leg_length_m(0) / 3600.0;
+    let near_s = 1800.0 - 9260.0 / speed(&tracks[0]).hypot(speed(&tracks[1]));
+    for k in 0..20 {
+        // B climbs through A's level and has 1 000 ft again this long after they have come near.
+        let apart_s = near_s + 0.14 + 0.001 * f64::from(k);
+        let lat = |s: f64| 4.0 * s / 3600.0 - 2.0;
+        let mut parts = crossing(350.0, 350.0);
+        let (from_s, until_s) = (apart_s - 60.0, apart_s + 60.0);
+        parts.flights[1] = flight(
+            "B",
+            &[
+                (0.0, 2.0, lat(0.0), 340.0),
+                (from_s / 60.0, 2.0, lat(from_s), 340.0),
+                (until_s / 60.0, 2.0, lat(until_s), 380.0),
+                (60.0, 2.0, lat(3600.0), 380.0),
+            ],
+        );
+        let found = spells(parts);
+        assert_eq!(found.len(), 1, "{k}");
+        let lasts_s = found[0].until_s - found[0].from_s;
+        // 1.64 ft at 33 ft/s are for the plan.
+        assert!((0.05..0.14).contains(&lasts_s), "{lasts_s}");
+    }
+}
+
+#[test]
 fn vertical_minima() {
     assert_eq!(spells(crossing(350.0, 360.0)).len(), 0);
     assert_eq!(spells(crossing(350.0, 359.0)).len(), 1);
