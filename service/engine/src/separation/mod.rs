@@ -21,10 +21,12 @@ mod crossing;
 mod index;
 mod known;
 mod minima;
+mod moved;
 mod pair;
 mod risk;
 mod scene;
 mod segment;
+mod shift_clashes;
 mod shift_set;
 #[cfg(test)]
 mod tests;
@@ -32,10 +34,14 @@ mod versions;
 
 pub use known::{is_known, new_losses};
 pub use minima::{HorizontalMinimum, Minimum};
-pub use risk::{PairRisk, expected_new_losses, farthest_shift_s, pair_probability, pair_risks};
+pub use moved::{MovedIndex, losses_of_moved, new_losses_in_plan};
+pub use risk::{
+    PairRisk, expected_new_losses, farthest_shift_s, pair_probability, pair_risks,
+    pair_risks_in_plan,
+};
 pub use scene::{Scene, Survivors, Version, filed_losses, pair_losses, survivors};
+pub use shift_clashes::{ShiftRule, shift_clashes};
 pub use shift_set::{ShiftSet, shift_set};
 pub use versions::{
-    VersionPair, VersionRef, clashes, losses_against_filed, losses_of_moved,
-    new_losses_against_filed,
+    VersionPair, VersionRef, clashes, losses_against_filed, new_losses_against_filed,
 };

@@ -8,10 +8,10 @@ use std::collections::BTreeSet;
 
 use rayon::prelude::*;
 
-use super::index::Index;
+use super::moved::MovedIndex;
 use super::scene::{Scene, Version};
-use super::segment::{SLICE_S, Segment, segments};
-use super::shift_set::{ShiftSet, Shifting, shift_set};
+use super::segment::segments;
+use super::shift_set::{Reach, ShiftSet, shift_set};
 use crate::ids::FlightId;
 
 /// Shifts beyond this many deviations of the shift are left out: 2.0e-9 of the probability.
@@ -56,37 +56,29 @@ impl PairRisk {
 /// flight. Each moved flight is given in one version; all others are as filed.
 #[must_use]
 pub fn pair_risks(scene: &Scene, moved: &[Version<'_>]) -> Vec<PairRisk> {
-    let is_moved: BTreeSet<FlightId> = moved.iter().map(|v| v.flight).collect();
-    let cut = |version: &Version<'_>, owner: u32| {
-        segments(owner, &scene.course(version), &scene.rules, 0, f64::INFINITY)
-    };
-    let own: Vec<_> = (0..moved.len()).into_par_iter().map(|i| cut(&moved[i], i as u32)).collect();
-    let index = Index::new(&own);
-    let farthest_s = farthest_shift_s(scene.policy.time_sigma_s);
-    let reach = Reach { scene, shifting: Shifting { scene, within_s: (-farthest_s, farthest_s) } };
+    let index = MovedIndex::new(scene, moved);
     let mut risks: Vec<PairRisk> = moved
         .par_iter()
-        .zip(&own)
-        .flat_map_iter(|(version, segments)| {
+        .flat_map_iter(|version| {
             // Of two moved flights the pair is counted with the smaller one.
-            let mut planned = reach.shifts(version, segments, &scene.index, |owner| {
-                let other = FlightId(owner);
-                (!is_moved.contains(&other)).then(|| scene.filed(other))
-            });
-            planned.extend(reach.shifts(version, segments, &index, |owner| {
-                Some(moved[owner as usize]).filter(|other| version.flight < other.flight)
-            }));
-            let filed = scene.filed(version.flight);
-            let before = reach.shifts(&filed, &cut(&filed, 0), &scene.index, |owner| {
-                let other = FlightId(owner);
-                let counts = !is_moved.contains(&other) || version.flight < other;
-                counts.then(|| scene.filed(other))
-            });
-            risks_of(version.flight, planned, before, scene.policy.time_sigma_s)
+            risks_of(scene, version, (moved, &index), |other| version.flight < other)
         })
         .collect();
     risks.sort_by_key(|risk| (risk.first, risk.second));
     risks
+}
+
+/// The risk of every pair of one changed version with another flight that could meet before or
+/// after, by other flight: as planned with the moved versions of a plan, of other flights as filed;
+/// before, with all flights as filed.
+#[must_use]
+pub fn pair_risks_in_plan(
+    scene: &Scene,
+    version: &Version<'_>,
+    moved: &[Version<'_>],
+    index: &MovedIndex,
+) -> Vec<PairRisk> {
+    risks_of(scene, version, (moved, index), |_| true)
 }
 
 /// Expected new losses: the sum of what the moved flights add to the probabilities of pairs.
@@ -95,68 +87,48 @@ pub fn expected_new_losses(scene: &Scene, moved: &[Version<'_>]) -> f64 {
     pair_risks(scene, moved).iter().map(PairRisk::added).sum()
 }
 
-/// Finds the shifts of one version against many.
-struct Reach<'a> {
-    scene: &'a Scene,
-    shifting: Shifting<'a>,
-}
-
-impl<'a> Reach<'a> {
-    /// Every shift at which a version loses separation from the indexed versions that are chosen.
-    fn shifts(
-        &self,
-        version: &Version<'_>,
-        own: &[(i64, Segment)],
-        index: &Index,
-        choose: impl Fn(u32) -> Option<Version<'a>>,
-    ) -> Vec<(FlightId, (f64, f64))> {
-        let course = self.scene.course(version);
-        let slices = (self.shifting.within_s.1 / SLICE_S).ceil() as i64;
-        let (mut found, mut shifts) = (Vec::new(), Vec::new());
-        for (number, segment) in own {
-            for slice in (number - slices - 1..=number + slices + 1).filter_map(|n| index.slice(n))
-            {
-                slice.near(&segment.bounds, |other_segment| {
-                    let Some(other) = choose(other_segment.owner) else { return };
-                    if other.flight == version.flight {
-                        return;
-                    }
-                    let other_course = self.scene.course(&other);
-                    let (a, b) = ((&course, segment), (&other_course, other_segment));
-                    self.shifting.of_segments(a, b, &mut shifts);
-                    found.extend(shifts.drain(..).map(|shift| (other.flight, shift)));
-                });
-            }
-        }
-        found
-    }
-}
-
-/// The risks of one flight, from its shifts against others as planned and as filed.
+/// The risks of one version, with the flights not moved and the moved ones that count.
 fn risks_of(
-    flight: FlightId,
-    planned: Vec<(FlightId, (f64, f64))>,
-    filed: Vec<(FlightId, (f64, f64))>,
-    sigma_s: f64,
+    scene: &Scene,
+    version: &Version<'_>,
+    (moved, index): (&[Version<'_>], &MovedIndex),
+    counts: impl Fn(FlightId) -> bool,
 ) -> Vec<PairRisk> {
+    let sigma_s = scene.policy.time_sigma_s;
+    let farthest_s = farthest_shift_s(sigma_s);
+    let reach = Reach { scene, within_s: (-farthest_s, farthest_s) };
+    let own = segments(0, &scene.course(version), &scene.rules, 0, f64::INFINITY);
+    let mut planned = reach.shifts(version, &own, &scene.index, |owner| {
+        let other = FlightId(owner);
+        index.position(other).is_none().then(|| scene.filed(other))
+    });
+    let among_moved = reach.shifts(version, &own, index.index(), |owner| {
+        moved.get(owner as usize).filter(|other| counts(other.flight)).copied()
+    });
+    planned.extend(among_moved);
+    let filed = scene.filed(version.flight);
+    let own = segments(0, &scene.course(&filed), &scene.rules, 0, f64::INFINITY);
+    let before = reach.shifts(&filed, &own, &scene.index, |owner| {
+        let other = FlightId(owner);
+        (index.position(other).is_none() || counts(other)).then(|| scene.filed(other))
+    });
     let planned = probabilities(planned, sigma_s);
-    let filed = probabilities(filed, sigma_s);
+    let before = probabilities(before, sigma_s);
     let others: BTreeSet<FlightId> =
-        planned.iter().chain(&filed).map(|(other, _)| *other).collect();
+        planned.iter().chain(&before).map(|(other, _)| *other).collect();
     let of = |list: &[(FlightId, f64)], other: FlightId| {
         list.binary_search_by_key(&other, |(id, _)| *id).map_or(0.0, |i| list[i].1)
     };
-    others
-        .into_iter()
-        .map(|other| PairRisk {
-            first: flight.min(other),
-            second: flight.max(other),
-            filed: of(&filed, other),
-            planned: of(&planned, other),
-        })
-        .collect()
+    let risk = |other: FlightId| PairRisk {
+        first: version.flight.min(other),
+        second: version.flight.max(other),
+        filed: of(&before, other),
+        planned: of(&planned, other),
+    };
+    others.into_iter().map(risk).collect()
 }
 
+/// Probabilities by other flight, from the shifts at which separation is lost.
 fn probabilities(mut shifts: Vec<(FlightId, (f64, f64))>, sigma_s: f64) -> Vec<(FlightId, f64)> {
     shifts.sort_by_key(|(other, _)| *other);
     shifts

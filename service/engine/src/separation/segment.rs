@@ -34,12 +34,14 @@ impl Bounds {
     pub(super) fn meets(&self, other: &Self) -> bool {
         let vertical_ft = self.vertical_ft.max(other.vertical_ft);
         let horizontal_m = self.horizontal_m.max(other.horizontal_m);
-        self.low_ft - other.high_ft < vertical_ft
-            && other.low_ft - self.high_ft < vertical_ft
-            && (0..3).all(|k| {
-                self.low_m[k] - other.high_m[k] < horizontal_m
-                    && other.low_m[k] - self.high_m[k] < horizontal_m
-            })
+        // Without short cuts: hardly any pair meets, and no branch inside is easy to foresee.
+        let mut meets = (self.low_ft - other.high_ft < vertical_ft)
+            & (other.low_ft - self.high_ft < vertical_ft);
+        for k in 0..3 {
+            meets &= (self.low_m[k] - other.high_m[k] < horizontal_m)
+                & (other.low_m[k] - self.high_m[k] < horizontal_m);
+        }
+        meets
     }
 }
 

@@ -5,10 +5,12 @@
 //! loss under independent normal errors of the two flights' times.
 
 use super::crossing::{Leg, shifts};
+use super::index::Index;
 use super::minima::{Minimum, VERTICAL_STEPS_FT, limit_chord_m, limit_vertical_ft};
 use super::pair::Course;
 use super::scene::{Scene, Version};
-use super::segment::{Segment, segments};
+use super::segment::{SLICE_S, Segment, segments};
+use crate::ids::FlightId;
 
 /// Intervals this close to each other are one, seconds.
 const JOIN_S: f64 = 1e-6;
@@ -87,38 +89,113 @@ pub fn shift_set(
     let [a_segments, b_segments] =
         [&a, &b].map(|course| segments(0, course, &scene.rules, 0, f64::INFINITY));
     let mut found = Vec::new();
-    let shifting = Shifting { scene, within_s };
+    let reach = Reach { scene, within_s };
     for (_, one) in &a_segments {
+        let mut own = OwnLegs::default();
         for (_, other) in &b_segments {
             if one.bounds.meets(&other.bounds) {
-                shifting.of_segments((&a, one), (&b, other), &mut found);
+                reach.of_segments((&a, one, &mut own), (&b, other), &mut found);
             }
         }
     }
     ShiftSet::union(found)
 }
 
+/// The legs of a segment, made when they are first needed.
+#[derive(Default)]
+pub(super) struct OwnLegs {
+    legs: Option<Vec<Leg>>,
+}
+
+/// A segment as one straight and even motion, whatever its level.
+fn straight(segment: &Segment) -> Leg {
+    Leg {
+        from_s: segment.from_s,
+        until_s: segment.until_s,
+        place_m: segment.place_m,
+        velocity_mps: segment.velocity_mps,
+        level_ft: 0.0,
+        climb_ftps: 0.0,
+        class_ft: 0.0,
+        horizontal_m: 0.0,
+    }
+}
+
 /// Finds shifts within an interval.
 #[derive(Clone, Copy)]
-pub(super) struct Shifting<'a> {
+pub(super) struct Reach<'a> {
     pub(super) scene: &'a Scene,
     pub(super) within_s: (f64, f64),
 }
 
-impl Shifting<'_> {
+impl<'a> Reach<'a> {
+    /// Every interval of shifts at which a version, in segments, loses separation from those of
+    /// the indexed versions that are chosen by their number, with the flight of each.
+    pub(super) fn shifts(
+        &self,
+        version: &Version<'_>,
+        own: &[(i64, Segment)],
+        index: &Index,
+        choose: impl Fn(u32) -> Option<Version<'a>>,
+    ) -> Vec<(FlightId, (f64, f64))> {
+        let mut found = Vec::new();
+        self.visit(version, own, index, choose, |_, other, shift| found.push((other, shift)));
+        found
+    }
+
+    /// The same, each interval told with the number and the flight of the other version.
+    pub(super) fn visit(
+        &self,
+        version: &Version<'_>,
+        own: &[(i64, Segment)],
+        index: &Index,
+        choose: impl Fn(u32) -> Option<Version<'a>>,
+        mut tell: impl FnMut(u32, FlightId, (f64, f64)),
+    ) {
+        let course = self.scene.course(version);
+        let slices = (self.within_s.1.max(-self.within_s.0) / SLICE_S).ceil() as i64 + 1;
+        let mut shifts = Vec::new();
+        for (number, segment) in own {
+            let mut legs = OwnLegs::default();
+            for slice in (number - slices..=number + slices).filter_map(|n| index.slice(n)) {
+                slice.near(&segment.bounds, |other_segment| {
+                    let Some(other) = choose(other_segment.owner) else { return };
+                    if other.flight == version.flight {
+                        return;
+                    }
+                    let other_course = self.scene.course(&other);
+                    let a = (&course, segment, &mut legs);
+                    let b = (&other_course, other_segment);
+                    self.of_segments(a, b, &mut shifts);
+                    for shift in shifts.drain(..) {
+                        tell(other_segment.owner, other.flight, shift);
+                    }
+                });
+            }
+        }
+    }
+
     /// The shifts at which parts of two courses lose separation, appended.
     pub(super) fn of_segments(
         &self,
-        a: (&Course<'_>, &Segment),
+        a: (&Course<'_>, &Segment, &mut OwnLegs),
         b: (&Course<'_>, &Segment),
         found: &mut Vec<(f64, f64)>,
     ) {
         if !self.in_reach(a.1.from_s, a.1.until_s, b.1.from_s, b.1.until_s) {
             return;
         }
+        // Were both to move straight and evenly, they would be off by as much as they stray.
+        let horizontal_m = f64::from(a.1.bounds.horizontal_m.max(b.1.bounds.horizontal_m));
+        let limit_m = horizontal_m + a.1.stray_m + b.1.stray_m;
+        let coarse = shifts(&straight(a.1), &straight(b.1), limit_m, f64::INFINITY);
+        if coarse.is_none_or(|(low, high)| high < self.within_s.0 || self.within_s.1 < low) {
+            return;
+        }
         let rvsm = [a.0.rvsm, b.0.rvsm];
-        let [a_legs, b_legs] = [a, b].map(|(course, segment)| self.legs(course, segment));
-        for one in &a_legs {
+        let a_legs = a.2.legs.get_or_insert_with(|| self.legs(a.0, a.1));
+        let b_legs = self.legs(b.0, b.1);
+        for one in a_legs.iter() {
             for other in &b_legs {
                 if !self.in_reach(one.from_s, one.until_s, other.from_s, other.until_s) {
                     continue;

@@ -1,18 +1,16 @@
-//! Losses of changed versions: of one against the filed day, of the flights that a plan moves, and
-//! which versions exclude each other.
+//! Losses of changed versions: of one against the filed day, and which versions exclude each other.
 //!
 //! A changed version is cut into segments like the filed day. From its first changed piece on, or
 //! only up to the last one where nothing after it moves in time, it is swept against the filed
 //! segments and those of other changed versions of the same slice. What it shares with its filed
 //! version needs no second look: a loss there is that of the filed version.
 
-use std::collections::BTreeSet;
-
 use rayon::prelude::*;
 
 use super::index::Index;
 use super::known::{is_new, new_losses};
 use super::minima::Minimum;
+use super::moved::sort_losses;
 use super::pair::Breach;
 use super::scene::{Scene, Version, joined, loss};
 use super::segment::{SLICE_S, Segment, segments, slice_of};
@@ -66,13 +64,11 @@ pub fn new_losses_against_filed(scene: &Scene, version: &Version<'_>) -> Vec<Los
         new.retain(|loss| loss.first != other && loss.second != other);
         new.extend(new_losses(scene, version, &scene.filed(other)));
     }
-    new.sort_by(|x, y| {
-        (x.first, x.second).cmp(&(y.first, y.second)).then(x.from_s.total_cmp(&y.from_s))
-    });
+    sort_losses(&mut new);
     new
 }
 
-fn against_filed(
+pub(super) fn against_filed(
     scene: &Scene,
     version: &Version<'_>,
     minimum: Minimum,
@@ -104,7 +100,7 @@ fn against_filed(
     joined(&found).map(|(first, second, breach)| loss(first, second, &breach)).collect()
 }
 
-fn sort<K: Ord + Copy>(found: &mut [(K, K, Breach)]) {
+pub(super) fn sort<K: Ord + Copy>(found: &mut [(K, K, Breach)]) {
     found.sort_by(|x, y| (x.0, x.1).cmp(&(y.0, y.1)).then(x.2.from_s.total_cmp(&y.2.from_s)));
 }
 
@@ -144,28 +140,7 @@ impl ChangedPart {
     }
 }
 
-/// The losses of a day in which some flights are moved, one version each, between flights of which
-/// at least one is moved; by first flight, second flight and time.
-#[must_use]
-pub fn losses_of_moved(scene: &Scene, moved: &[Version<'_>]) -> Vec<Loss> {
-    let is_moved: BTreeSet<FlightId> = moved.iter().map(|v| v.flight).collect();
-    let own: Vec<_> = (0..moved.len())
-        .into_par_iter()
-        .map(|i| segments(i as u32, &scene.course(&moved[i]), &scene.rules, 0, f64::INFINITY))
-        .collect();
-    let sweep = Sweep { scene, versions: moved, minimum: Minimum::Plain };
-    let mut found = sweep.breaches(&Index::new(&own), |flight| !is_moved.contains(&flight));
-    sort(&mut found);
-    let flight = |version: VersionRef| flight_of(version, moved);
-    let mut losses: Vec<Loss> =
-        joined(&found).map(|(a, b, breach)| loss(flight(a), flight(b), &breach)).collect();
-    losses.sort_by(|x, y| {
-        (x.first, x.second).cmp(&(y.first, y.second)).then(x.from_s.total_cmp(&y.from_s))
-    });
-    losses
-}
-
-fn flight_of(version: VersionRef, versions: &[Version<'_>]) -> FlightId {
+pub(super) fn flight_of(version: VersionRef, versions: &[Version<'_>]) -> FlightId {
     match version {
         VersionRef::Filed(flight) => flight,
         VersionRef::Changed(index) => versions[index].flight,
@@ -173,15 +148,15 @@ fn flight_of(version: VersionRef, versions: &[Version<'_>]) -> FlightId {
 }
 
 /// Sweeps changed versions against the filed day and each other.
-struct Sweep<'a> {
-    scene: &'a Scene,
-    versions: &'a [Version<'a>],
-    minimum: Minimum,
+pub(super) struct Sweep<'a> {
+    pub(super) scene: &'a Scene,
+    pub(super) versions: &'a [Version<'a>],
+    pub(super) minimum: Minimum,
 }
 
 impl<'a> Sweep<'a> {
     /// Breaches of indexed versions, with filed flights that pass a test and among themselves.
-    fn breaches(
+    pub(super) fn breaches(
         &self,
         index: &Index,
         with_filed: impl Fn(FlightId) -> bool + Sync,
@@ -232,7 +207,7 @@ impl<'a> Sweep<'a> {
         found.extend(breaches.into_iter().map(|breach| (ordered[0], ordered[1], breach)));
     }
 
-    fn version(&self, version: VersionRef) -> Version<'a> {
+    pub(super) fn version(&self, version: VersionRef) -> Version<'a> {
         match version {
             VersionRef::Filed(flight) => self.scene.filed(flight),
             VersionRef::Changed(index) => self.versions[index],

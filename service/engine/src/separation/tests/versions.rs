@@ -5,8 +5,9 @@ use super::*;
 use crate::answer::Loss;
 use crate::path::Path;
 use crate::separation::{
-    Version, VersionPair, VersionRef, clashes, is_known, new_losses, new_losses_against_filed,
-    pair_losses,
+    MovedIndex, ShiftRule, Version, VersionPair, VersionRef, clashes, is_known, new_losses,
+    new_losses_against_filed, new_losses_in_plan, pair_losses, pair_probability, shift_clashes,
+    shift_set,
 };
 
 /// Three changes of every third flight of a crowd: levels, paces and extents vary, some keep their
@@ -114,4 +115,71 @@ fn no_loss_that_is_let_pass_is_new_by_the_rule() {
         }
     }
     assert!(known > 20, "{known}");
+}
+
+#[test]
+fn a_version_in_a_plan_finds_its_new_losses() {
+    let day = day_of(crowd(150, CENTRES[0], 14), Policy::default());
+    let (scene, tracks) = (scene_of(&day), tracks_of(&day));
+    let changes = changes(&tracks, 14);
+    let all = versions(&tracks, &changes);
+    let mut moved = all.clone();
+    moved.dedup_by_key(|v| v.flight);
+    let index = MovedIndex::new(&scene, &moved);
+    let mut counted = 0;
+    for version in all.iter().take(60) {
+        let planned = |i: u32| {
+            let flight = FlightId(i);
+            moved.iter().find(|v| v.flight == flight).copied().unwrap_or(scene.filed(flight))
+        };
+        let mut expected: Vec<Loss> =
+            (0..150).map(planned).flat_map(|other| new_losses(&scene, version, &other)).collect();
+        expected.sort_by(|x, y| {
+            (x.first, x.second).cmp(&(y.first, y.second)).then(x.from_s.total_cmp(&y.from_s))
+        });
+        let found = new_losses_in_plan(&scene, version, &moved, &index);
+        counted += found.len();
+        assert_same(&found, &expected);
+    }
+    assert!(counted > 20, "{counted}");
+}
+
+/// The rules for uncertain times, pair by pair.
+#[test]
+fn clashes_of_uncertain_times_are_the_pairs_that_break_the_rule() {
+    let policy = Policy { time_sigma_s: 60.0, ..Policy::default() };
+    let day = day_of(crowd(70, CENTRES[1], 15), policy);
+    let (scene, tracks) = (scene_of(&day), tracks_of(&day));
+    let changes = changes(&tracks, 15);
+    let versions = versions(&tracks, &changes);
+    let filed = |v: &Version<'_>| scene.filed(v.flight);
+    let meets = |a: &Version<'_>, b: &Version<'_>| {
+        shift_set(&scene, a, b, (-60.0, 60.0)).meets((-60.0, 60.0))
+    };
+    let buffered = |a: &Version<'_>, b: &Version<'_>| meets(a, b) && !meets(&filed(a), &filed(b));
+    let risky = |a: &Version<'_>, b: &Version<'_>| {
+        let planned = pair_probability(&scene, a, b);
+        planned > 0.1 && planned > pair_probability(&scene, &filed(a), &filed(b)) + 1e-9
+    };
+    type Broken<'a> = &'a dyn Fn(&Version<'_>, &Version<'_>) -> bool;
+    let rules: [(ShiftRule, Broken<'_>); 2] = [
+        (ShiftRule::Buffered { buffer_s: 30.0 }, &buffered),
+        (ShiftRule::Risk { max_probability: 0.1 }, &risky),
+    ];
+    let mut all: Vec<(VersionRef, Version<'_>)> =
+        (0..70).map(|i| (VersionRef::Filed(FlightId(i)), scene.filed(FlightId(i)))).collect();
+    all.extend(versions.iter().enumerate().map(|(i, v)| (VersionRef::Changed(i), *v)));
+    for (rule, broken) in rules {
+        let mut expected = Vec::new();
+        for (a, one) in &all {
+            for (b, other) in &all {
+                if one.flight < other.flight && broken(one, other) {
+                    expected.push(VersionPair { a: *a, b: *b });
+                }
+            }
+        }
+        expected.sort();
+        assert!(expected.len() > 30, "{}", expected.len());
+        assert_eq!(shift_clashes(&scene, &versions, rule), expected);
+    }
 }
