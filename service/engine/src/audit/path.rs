@@ -120,6 +120,26 @@ impl<'d> Path<'d> {
             })
     }
 
+    /// When a piece of the track's polyline is passed, from at the latest until at the earliest.
+    pub(super) fn passes_piece_s(&self, piece: usize) -> (f64, f64) {
+        let (from_filed_s, until_filed_s) = self.track.piece_times_s(piece);
+        let before = self.knots.partition_point(|k| k.filed_s < from_filed_s);
+        let after = self.knots.partition_point(|k| k.filed_s <= until_filed_s);
+        let at = |filed_s: f64, next: usize| {
+            let (a, b) = (self.knots[next - 1], self.knots[next]);
+            let share = (filed_s - a.filed_s) / (b.filed_s - a.filed_s);
+            a.time_s + (b.time_s - a.time_s) * share
+        };
+        let from_s = if before == 0 {
+            self.start_s()
+        } else {
+            at(from_filed_s, before.min(self.knots.len() - 1))
+        };
+        let until_s =
+            if after == self.knots.len() { self.end_s() } else { at(until_filed_s, after.max(1)) };
+        (from_s, until_s)
+    }
+
     fn segment(&self, time_s: f64) -> usize {
         let after = self.knots.partition_point(|k| k.time_s <= time_s);
         after.saturating_sub(1).min(self.knots.len() - 2)

@@ -196,22 +196,25 @@ impl Track {
         std::array::from_fn(|k| (a[k] + (b[k] - a[k]) * share) * lift)
     }
 
-    /// Boxes in degrees around the pieces of the polyline: west, south, east, north. A piece that
-    /// crosses the 180th meridian gives two.
-    pub(super) fn boxes(&self) -> impl Iterator<Item = [f64; 4]> + '_ {
-        self.cuts
-            .windows(2)
-            .flat_map(|ends| {
-                let (a, b) = (ends[0].place, ends[1].place);
-                let (south, north) = (a.lat_deg.min(b.lat_deg), a.lat_deg.max(b.lat_deg));
-                let (west, east) = (a.lon_deg.min(b.lon_deg), a.lon_deg.max(b.lon_deg));
-                if east - west > 180.0 {
-                    [Some([east, south, 180.0, north]), Some([-180.0, south, west, north])]
-                } else {
-                    [Some([west, south, east, north]), None]
-                }
-            })
-            .flatten()
+    /// Boxes in degrees around the pieces of the polyline, each with the number of its piece: west,
+    /// south, east, north. A piece that crosses the 180th meridian gives two.
+    pub(super) fn boxes(&self) -> impl Iterator<Item = (usize, [f64; 4])> + '_ {
+        self.cuts.windows(2).enumerate().flat_map(|(piece, ends)| {
+            let (a, b) = (ends[0].place, ends[1].place);
+            let (south, north) = (a.lat_deg.min(b.lat_deg), a.lat_deg.max(b.lat_deg));
+            let (west, east) = (a.lon_deg.min(b.lon_deg), a.lon_deg.max(b.lon_deg));
+            let boxes = if east - west > 180.0 {
+                [Some([east, south, 180.0, north]), Some([-180.0, south, west, north])]
+            } else {
+                [Some([west, south, east, north]), None]
+            };
+            boxes.into_iter().flatten().map(move |b| (piece, b))
+        })
+    }
+
+    /// Filed times of both ends of a piece of the polyline.
+    pub(super) fn piece_times_s(&self, piece: usize) -> (f64, f64) {
+        (self.cuts[piece].filed_s, self.cuts[piece + 1].filed_s)
     }
 }
 

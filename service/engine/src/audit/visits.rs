@@ -80,33 +80,65 @@ impl<'d> SectorMap<'d> {
     /// All visits of a flown profile, by sector, then by time. `as_filed` times are exact at the
     /// end of the profile too; the first point never moves.
     pub(super) fn visits(&self, path: &Path<'_>, as_filed: AsFiled) -> Vec<Visit> {
-        let (low_ft, high_ft) = path.level_range_ft();
-        let mut near: Vec<u32> = Vec::new();
-        let mut last_cells = Vec::new();
-        for b in path.track.boxes() {
-            let mut cells = Vec::new();
-            for_cells(b, |cell| cells.push(cell));
-            if cells != last_cells {
-                near.extend(cells.iter().flat_map(|&cell| &self.cells[cell]));
-                last_cells = cells;
-            }
-        }
-        near.sort_unstable();
-        near.dedup();
         let mut visits = Vec::new();
-        for id in near {
-            let volumes: Vec<&Volume> = self.day.sectors[SectorId(id)]
+        let passes = self.passes(path);
+        for of_sector in passes.chunk_by(|a, b| a.sector == b.sector) {
+            let sector = SectorId(of_sector[0].sector);
+            let (low_ft, high_ft) = path.level_range_ft();
+            let volumes: Vec<&Volume> = self.day.sectors[sector]
                 .volumes
                 .iter()
                 .filter(|v| v.floor_ft <= high_ft && low_ft < v.ceiling_ft)
                 .collect();
-            if !volumes.is_empty() {
-                let look = Look { path, volumes: &volumes, degps: path.fastest_degps() };
-                look.visits(SectorId::from_index(id as usize), as_filed, &mut visits);
+            if volumes.is_empty() {
+                continue;
+            }
+            let look = Look { path, volumes: &volumes, degps: path.fastest_degps() };
+            for together in of_sector.chunk_by(|a, b| a.piece + 1 == b.piece) {
+                let (first, last) = (together[0].piece, together[together.len() - 1].piece);
+                let (from_s, until_s) = (path.passes_piece_s(first).0, path.passes_piece_s(last).1);
+                look.visits(sector, (from_s, until_s), as_filed, &mut visits);
             }
         }
         visits
     }
+}
+
+/// A piece of a track's polyline that comes within the box around a volume of a sector.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+struct Pass {
+    sector: u32,
+    piece: usize,
+}
+
+impl SectorMap<'_> {
+    /// Where a flight may be over a sector at all, by sector, then along the track.
+    fn passes(&self, path: &Path<'_>) -> Vec<Pass> {
+        let mut passes = Vec::new();
+        for (piece, b) in path.track.boxes() {
+            for_cells(b, |cell| {
+                for &sector in &self.cells[cell] {
+                    let volumes = &self.day.sectors[SectorId(sector)].volumes;
+                    if volumes.iter().any(|v| boxes_meet(b, v)) {
+                        passes.push(Pass { sector, piece });
+                    }
+                }
+            });
+        }
+        passes.sort_unstable();
+        passes.dedup();
+        passes
+    }
+}
+
+/// Whether a box in degrees and that around a volume's outline meet, with room for rounding.
+fn boxes_meet([west, south, east, north]: [f64; 4], volume: &Volume) -> bool {
+    let b = volume.polygon.bounds();
+    let room = NEAR_BOX_DEG;
+    west - room <= b.east
+        && b.west <= east + room
+        && south - room <= b.north
+        && b.south <= north + room
 }
 
 /// Whether a profile is the filed one.
@@ -135,8 +167,14 @@ struct Look<'a, 'd> {
 }
 
 impl Look<'_, '_> {
-    fn visits(&self, sector: SectorId, as_filed: AsFiled, out: &mut Vec<Visit>) {
-        let (start_s, end_s) = (self.path.start_s(), self.path.end_s());
+    /// The visits in a time before and after which the flight is not over the sector.
+    fn visits(
+        &self,
+        sector: SectorId,
+        (start_s, end_s): (f64, f64),
+        as_filed: AsFiled,
+        out: &mut Vec<Visit>,
+    ) {
         let mut time_s = start_s;
         let (mut inside, mut quiet_s) = self.look(time_s);
         let mut begin = inside.then_some(Moment::exact(start_s));
