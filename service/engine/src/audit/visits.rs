@@ -9,7 +9,7 @@ use super::path::{Path, State};
 use super::tolerances::{BISECTION_S, EDGE_S, EDGE_STEP_S};
 use crate::day::{Day, Volume};
 use crate::geometry::geodesic::LonLat;
-use crate::ids::{Id, SectorId};
+use crate::ids::SectorId;
 
 /// A time, and how far it may be off.
 #[derive(Debug, Clone, Copy, PartialEq)]

@@ -13,7 +13,7 @@ use crate::change::{Change, written_points};
 use crate::day::Stretch;
 use crate::geometry::geodesic::{GeodesicLeg, LonLat};
 use crate::ids::{FlightId, ProposalId};
-use crate::search::{Index, choice};
+use crate::search::{Index, State, choice};
 use crate::separation::{expected_new_losses, is_known, losses_of_moved};
 use crate::traffic::Traffic;
 
@@ -29,10 +29,15 @@ pub(super) fn plan_of(
         Some((problem.asking[group as usize].flight, combination.change.clone()))
     });
     let state = PlanState::new(traffic, changes);
-    let chosen = Chosen { traffic, problem, index, choices, state: &state };
+    let chosen = Chosen { traffic, problem, choices, state: &state };
     let proposals: Vec<ProposalId> = traffic.day.proposals.ids().collect();
-    let decisions: Vec<Decision> =
-        proposals.into_par_iter().map(|proposal| decision(&chosen, proposal)).collect();
+    let decisions: Vec<Decision> = proposals
+        .into_par_iter()
+        .map_init(
+            || State::new(index, choices),
+            |searched, proposal| decision(&chosen, searched.as_mut(), proposal),
+        )
+        .collect();
     let moved = state
         .moved()
         .map(|(flight, moved)| MovedProfile {
@@ -51,7 +56,8 @@ pub(super) fn plan_of(
     }
 }
 
-fn decision(chosen: &Chosen<'_>, id: ProposalId) -> Decision {
+/// The decision on a proposal; `searched` is the search's state of the plan's choices.
+fn decision(chosen: &Chosen<'_>, searched: Option<&mut State<'_>>, id: ProposalId) -> Decision {
     let proposal = &chosen.traffic.day.proposals[id];
     let judged = &chosen.problem.judged[id];
     let as_asked = Grant { proposal: id, alternative: 0 };
@@ -70,7 +76,9 @@ fn decision(chosen: &Chosen<'_>, id: ProposalId) -> Decision {
             .collect(),
     };
     let exchange = match verdict {
-        Verdict::Refused => chosen.exchange(as_asked).filter(|e| !e.drops.is_empty()),
+        Verdict::Refused => searched
+            .and_then(|state| chosen.exchange(state, as_asked))
+            .filter(|e| !e.drops.is_empty()),
         Verdict::Granted | Verdict::Amended | Verdict::Invalid => None,
     };
     let change = chosen.state.moved_flight(proposal.flight).map(|moved| &moved.change);

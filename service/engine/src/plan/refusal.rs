@@ -5,14 +5,13 @@ use super::problem::Problem;
 use super::state::PlanState;
 use crate::answer::{Constraint, Exchange, Reason};
 use crate::ids::ProposalId;
-use crate::search::{Blocker, Choice, Index, State, choice};
+use crate::search::{Blocker, Choice, State, choice};
 use crate::traffic::Traffic;
 
 /// A plan's choices, and the day that they make.
 pub(super) struct Chosen<'a> {
     pub(super) traffic: &'a Traffic,
     pub(super) problem: &'a Problem,
-    pub(super) index: &'a Index,
     pub(super) choices: &'a [u32],
     pub(super) state: &'a PlanState,
 }
@@ -106,25 +105,35 @@ impl Chosen<'_> {
 
     /// Grants that would have to go so that this one could be added: blockers are taken away one
     /// after the other, each time the grant that is worth least. `None` where what blocks it is no
-    /// grant.
-    pub(super) fn exchange(&self, grant: Grant) -> Option<Exchange> {
+    /// grant. `state` is that of the plan's choices, before and after.
+    pub(super) fn exchange(&self, state: &mut State<'_>, grant: Grant) -> Option<Exchange> {
         let target = self.adding(grant)?;
-        let mut state = State::new(self.index, self.choices)?;
+        let mut dropped: Vec<Choice> = Vec::new();
         // Each round takes a grant away, so there are no more rounds than grants.
-        while let Some(blocker) = state.blockers(target).first().copied() {
-            let drop = self.cheapest_drop(&state, target, blocker)?;
+        let mut blocked = state.blockers(target).first().copied();
+        let mut stuck = false;
+        while let Some(blocker) = blocked {
+            let Some(drop) = self.cheapest_drop(state, &dropped, target, blocker) else {
+                stuck = true;
+                break;
+            };
             state.switch(drop);
+            dropped.retain(|d| d.group != drop.group);
+            dropped.push(drop);
+            blocked = state.blockers(target).first().copied();
         }
-        let mut drops = Vec::new();
-        for (group, candidate) in (0u32..).zip(state.choices()) {
-            if candidate == self.choices[group as usize] {
-                continue;
-            }
-            let kept = self.problem.combination(choice(group, candidate));
-            let kept = kept.map_or(&[][..], |c| &c.grants);
-            drops.extend(self.grants(group).iter().filter(|g| !kept.contains(g)));
+        for drop in &dropped {
+            state.switch(choice(drop.group, self.choices[drop.group as usize]));
         }
-        let lost: i64 = drops.iter().map(|&&g| self.problem.worth(g)).sum();
+        if stuck {
+            return None;
+        }
+        let mut drops: Vec<Grant> = Vec::new();
+        for &drop in &dropped {
+            let kept = self.problem.combination(drop).map_or(&[][..], |c| &c.grants);
+            drops.extend(self.grants(drop.group).iter().filter(|g| !kept.contains(g)));
+        }
+        let lost: i64 = drops.iter().map(|&g| self.problem.worth(g)).sum();
         let mut drops: Vec<ProposalId> = drops.iter().map(|g| g.proposal).collect();
         drops.sort_unstable();
         let objective_lost = self.problem.quantum.amount(lost);
@@ -133,17 +142,22 @@ impl Chosen<'_> {
 
     /// The switch to fewer grants of one flight that takes a blocker away, or lessens it, at the
     /// least loss.
-    fn cheapest_drop(&self, state: &State<'_>, target: Choice, blocker: Blocker) -> Option<Choice> {
+    fn cheapest_drop(
+        &self,
+        state: &State<'_>,
+        dropped: &[Choice],
+        target: Choice,
+        blocker: Blocker,
+    ) -> Option<Choice> {
         let model = &self.problem.model;
-        let choices = state.choices();
         let relieving: Vec<Choice> = match blocker {
             Blocker::Forbidden => return None,
             Blocker::Clash { with } => self.fewer_grants(with),
-            Blocker::Row { row, .. } => self.drops_from(&model.rows[row].terms, &choices),
+            Blocker::Row { row, .. } => self.drops_from(&model.rows[row].terms, dropped),
             Blocker::AnyOf { any_of } => model.any_ofs[any_of]
                 .rows
                 .iter()
-                .flat_map(|row| self.drops_from(&row.terms, &choices))
+                .flat_map(|row| self.drops_from(&row.terms, dropped))
                 .collect(),
         };
         relieving
@@ -152,10 +166,18 @@ impl Chosen<'_> {
             .max_by_key(|drop| (state.gain(*drop), std::cmp::Reverse(*drop)))
     }
 
-    /// For each chosen candidate that adds to a row, the switches that add less.
-    fn drops_from(&self, terms: &[(Choice, i32)], choices: &[u32]) -> Vec<Choice> {
-        let delta = |of: Choice| terms.iter().filter(|t| t.0 == of).map(|t| t.1).sum::<i32>();
-        let chosen = terms.iter().filter(|(c, _)| choices[c.group as usize] == c.candidate);
+    /// For each chosen candidate that adds to a row, the switches that add less. Terms are in the
+    /// order of choices.
+    fn drops_from(&self, terms: &[(Choice, i32)], dropped: &[Choice]) -> Vec<Choice> {
+        let delta = |of: Choice| {
+            let found = terms.binary_search_by_key(&of, |term| term.0);
+            found.map_or(0, |position| terms[position].1)
+        };
+        let now = |group: u32| {
+            let changed = dropped.iter().find(|d| d.group == group);
+            changed.map_or(self.choices[group as usize], |d| d.candidate)
+        };
+        let chosen = terms.iter().filter(|(c, _)| now(c.group) == c.candidate);
         chosen
             .flat_map(|&(c, _)| {
                 let less = move |fewer: &Choice| delta(*fewer) < delta(c);
