@@ -6,9 +6,6 @@ use crate::answer::Loss;
 use crate::day::Policy;
 use crate::units::nm_to_m;
 
-/// Times are written in whole milliseconds; a loss this near to a change meets it, seconds.
-const TOUCH_S: f64 = 0.01;
-
 /// Whether a loss between two versions is one that the filed day already holds: throughout it both
 /// flights are at the level they filed at that place, and one filed loss of the pair is at most
 /// `same_loss_s` apart in time and not farther by more than `known_loss_margin_nm`.
@@ -23,18 +20,13 @@ pub fn is_known(
     policy: &Policy,
 ) -> bool {
     let off = off_level_s.iter().copied().flatten();
-    !meets_any(loss, off, 0.0) && filed.iter().any(|f| matches(loss, f, policy, 0.0))
+    !meets_any(loss, off) && filed.iter().any(|f| matches(loss, f, policy, 0.0))
 }
 
-fn meets_any<'a>(
-    loss: &Loss,
-    intervals: impl Iterator<Item = &'a (f64, f64)>,
-    touch_s: f64,
-) -> bool {
-    let mut intervals = intervals;
-    intervals.any(|&(from_s, until_s)| {
-        loss.from_s < until_s + touch_s && from_s - touch_s < loss.until_s
-    })
+/// A loss that begins as a flight is back at its filed level does not meet the time before: flights
+/// that were exactly a minimum apart until then lose it from that moment on.
+fn meets_any<'a>(loss: &Loss, mut intervals: impl Iterator<Item = &'a (f64, f64)>) -> bool {
+    intervals.any(|&(from_s, until_s)| loss.from_s < until_s && from_s < loss.until_s)
 }
 
 fn matches(loss: &Loss, filed: &Loss, policy: &Policy, margin_m: f64) -> bool {
@@ -60,8 +52,8 @@ pub(super) fn is_new(scene: &Scene, loss: &Loss, one: &Version<'_>, other: &Vers
     if as_filed_throughout(one, loss) && as_filed_throughout(other, loss) {
         return false;
     }
-    let mut off = one.path.off_level_s().iter().chain(other.path.off_level_s());
-    if meets_any(loss, &mut off, TOUCH_S) {
+    let off = one.path.off_level_s().iter().chain(other.path.off_level_s());
+    if meets_any(loss, off) {
         return true;
     }
     let filed = scene.losses_of(loss.first, loss.second);
