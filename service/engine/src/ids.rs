@@ -51,6 +51,10 @@ id!(
     ProposalId
 );
 id!(
+    /// A restriction of the day; ids follow the order of their names.
+    RestrictionId
+);
+id!(
     /// An aircraft class of the day.
     ClassId
 );

@@ -5,20 +5,25 @@
 //! airports, flights and proposals are sorted by name, so that answers do not depend on the order
 //! of the input.
 
+mod background;
 mod build;
 mod class;
 mod defect;
 mod flight;
+mod hand;
 mod parts;
 mod policy;
 mod profile;
 mod proposal;
+mod restriction;
 mod sector;
 
+pub use background::{Background, Flow};
 pub use build::Built;
 pub use class::{AircraftClass, FuelRow, FuelTable};
 pub use defect::{Defect, MOST_DEFECTS, Warning};
 pub use flight::Flight;
+pub use hand::{HandDecision, HandSubject};
 pub use parts::*;
 pub use policy::{
     DirectionLevels, KEYS, LevelDirection, ObjectiveRule, Policy, PolicyError, PolicyKey,
@@ -26,11 +31,12 @@ pub use policy::{
 };
 pub use profile::{Cruise, Point, Profile};
 pub use proposal::{Alternative, Proposal, Stretch};
+pub use restriction::Restriction;
 pub use sector::{
     Airport, AirportLimits, Period, Sector, SectorLimits, Volume, period_at, smallest_limit,
 };
 
-use crate::ids::{AirportId, ClassId, FlightId, IdVec, ProposalId, SectorId};
+use crate::ids::{AirportId, ClassId, FlightId, IdVec, ProposalId, RestrictionId, SectorId};
 
 /// A checked day.
 #[derive(Debug, Clone, PartialEq)]
@@ -53,6 +59,14 @@ pub struct Day {
     pub flights: IdVec<FlightId, Flight>,
     /// Proposals by name.
     pub proposals: IdVec<ProposalId, Proposal>,
+    /// Volumes that changed profiles must keep out of, by name.
+    pub restrictions: IdVec<RestrictionId, Restriction>,
+    /// Traffic known only as counts, by sector and time.
+    pub background: Vec<Background>,
+    /// What of that traffic moves from where to where.
+    pub flows: Vec<Flow>,
+    /// What was decided by hand.
+    pub decisions: Vec<HandDecision>,
     /// How many levels were snapped at loading.
     pub snapped_levels: u32,
 }

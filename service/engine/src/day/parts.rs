@@ -42,6 +42,14 @@ pub struct DayParts {
     pub flights: Vec<FlightParts>,
     /// Proposed level changes.
     pub proposals: Vec<ProposalParts>,
+    /// Volumes that changed profiles must keep out of.
+    pub restrictions: Vec<RestrictionParts>,
+    /// Traffic known only as counts.
+    pub background: Vec<BackgroundParts>,
+    /// What of that traffic moves from where to where.
+    pub flows: Vec<FlowParts>,
+    /// What was decided by hand.
+    pub decisions: Vec<DecisionParts>,
 }
 
 impl DayParts {
@@ -60,6 +68,10 @@ impl DayParts {
             fuel: Vec::new(),
             flights: Vec::new(),
             proposals: Vec::new(),
+            restrictions: Vec::new(),
+            background: Vec::new(),
+            flows: Vec::new(),
+            decisions: Vec::new(),
         }
     }
 }
@@ -256,4 +268,91 @@ pub struct StretchParts {
     pub from_s: Option<f64>,
     /// Filed time at which it starts to return; `None`: until the descent.
     pub until_s: Option<f64>,
+}
+
+/// Volumes that a changed profile must keep out of in a period.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct RestrictionParts {
+    /// A name, as answers tell it; several restrictions may share one.
+    pub restriction: String,
+    /// At least one volume.
+    pub volumes: Vec<VolumeParts>,
+    /// Start, seconds of the day.
+    pub from_s: f64,
+    /// End (not included), seconds of the day.
+    pub until_s: f64,
+    /// Levels that stay allowed where they are held, feet.
+    pub levels_allowed_ft: Vec<f64>,
+    /// Only flights from this airport, if given.
+    pub departure: Option<String>,
+    /// Only flights to this airport, if given.
+    pub destination: Option<String>,
+}
+
+/// Traffic of a sector that is known only as counts.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct BackgroundParts {
+    /// The sector's name.
+    pub sector: String,
+    /// Start, seconds of the day.
+    pub from_s: f64,
+    /// End (not included), seconds of the day.
+    pub until_s: f64,
+    /// How many aircraft are inside throughout; may be a fraction.
+    pub aircraft: f64,
+    /// Their level, feet, if known.
+    pub level_ft: Option<f64>,
+    /// How many of them enter, spread evenly over the period.
+    pub entries: Option<f64>,
+}
+
+/// Traffic known only as counts that moves from one sector and level to another.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct FlowParts {
+    /// Sector left.
+    pub from_sector: String,
+    /// Level left, feet.
+    pub from_level_ft: f64,
+    /// Sector entered.
+    pub to_sector: String,
+    /// Level entered, feet.
+    pub to_level_ft: f64,
+    /// Start, seconds of the day.
+    pub from_s: f64,
+    /// End (not included), seconds of the day.
+    pub until_s: f64,
+    /// How many aircraft do so in the period; may be a fraction.
+    pub aircraft: f64,
+}
+
+/// What is decided by hand about a proposal or a flight.
+#[derive(Debug, Clone, PartialEq)]
+pub struct DecisionParts {
+    /// The proposal or the flight.
+    pub about: DecisionAbout,
+    /// What must become of it.
+    pub must: Must,
+}
+
+/// What a decision by hand is about.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub enum DecisionAbout {
+    /// A proposal, by name.
+    Proposal(String),
+    /// A flight, by name.
+    Flight(String),
+}
+
+/// What was decided by hand.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Must {
+    /// A proposal is to be granted, with this option or with any.
+    Grant {
+        /// The option's number.
+        option: Option<u32>,
+    },
+    /// A proposal is to be refused.
+    Refuse,
+    /// A flight is to fly as filed.
+    Keep,
 }

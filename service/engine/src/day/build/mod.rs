@@ -1,8 +1,11 @@
 //! From parts to a day: every defect is found, named by its path, and listed.
 
+mod counts;
+mod decisions;
 mod flights;
 mod places;
 mod proposals;
+mod restrictions;
 mod tables;
 
 use super::Day;
@@ -36,6 +39,10 @@ impl Day {
         let names = flights::Names { airports: &airports, classes: &classes };
         let (flights, snapped_levels) = build.flights(parts.flights, &names, &policy);
         let proposals = build.proposals(parts.proposals, &flights);
+        let restrictions = build.restrictions(parts.restrictions);
+        let background = build.background(parts.background, &sectors);
+        let flows = build.flows(parts.flows, &sectors);
+        let decisions = build.decisions(&parts.decisions, &flights, &proposals);
         if !build.defects.is_empty() {
             return Err(build.defects.into_vec());
         }
@@ -50,6 +57,10 @@ impl Day {
             fuel,
             flights: flights.into(),
             proposals: proposals.into(),
+            restrictions: restrictions.into(),
+            background,
+            flows,
+            decisions,
             snapped_levels,
         };
         Ok(Built { day, warnings: build.warnings })

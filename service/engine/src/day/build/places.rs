@@ -1,6 +1,8 @@
 //! Sectors, airports and their capacity rows.
 
-use super::super::parts::{AirportCapacityParts, AirportParts, CapacityParts, SectorParts};
+use super::super::parts::{
+    AirportCapacityParts, AirportParts, CapacityParts, SectorParts, VolumeParts,
+};
 use super::super::sector::{Airport, AirportLimits, Period, Sector, SectorLimits, Volume};
 use super::{Build, LARGEST_LIMIT};
 use crate::geometry::polygon::Polygon;
@@ -26,7 +28,7 @@ impl Build {
                 Ok(at) if times_are_good => periods[at]
                     .push((i, Period { from_s: row.from_s, until_s: row.until_s, limits })),
                 Ok(_) => {}
-                Err(_) => self.unknown_name("capacities", i, "sector", &row.sector),
+                Err(_) => self.unknown_name("capacities", i, "sector", "sector", &row.sector),
             }
         }
         for (sector, periods) in sectors.iter_mut().zip(periods) {
@@ -46,27 +48,45 @@ impl Build {
     }
 
     fn sector(&mut self, i: usize, parts: SectorParts) -> Sector {
-        if parts.volumes.is_empty() {
-            self.defects.push(
-                || format!("sectors[{i}].volumes"),
-                "is empty",
-                "give the sector at least one polygon with a floor and a ceiling",
-            );
-        }
         let horizontal_nm = self.optional(
             || format!("sectors[{i}].horizontal_nm"),
             parts.horizontal_nm,
             0.0..=200.0,
         );
-        let mut volumes = Vec::with_capacity(parts.volumes.len());
-        for (v, volume) in parts.volumes.into_iter().enumerate() {
+        let volumes = self.volumes(&format!("sectors[{i}]"), "sector", parts.volumes);
+        Sector {
+            name: parts.sector,
+            title: parts.name,
+            volumes,
+            horizontal_nm,
+            no_changes: parts.no_changes,
+            open: Vec::new(),
+        }
+    }
+
+    /// The volumes of a sector or another thing at a path.
+    pub(super) fn volumes(
+        &mut self,
+        path: &str,
+        what: &str,
+        parts: Vec<VolumeParts>,
+    ) -> Vec<Volume> {
+        if parts.is_empty() {
+            self.defects.push(
+                || format!("{path}.volumes"),
+                "is empty",
+                format!("give the {what} at least one polygon with a floor and a ceiling"),
+            );
+        }
+        let mut volumes = Vec::with_capacity(parts.len());
+        for (v, volume) in parts.into_iter().enumerate() {
             let (floor_ft, ceiling_ft) = (volume.floor_ft, volume.ceiling_ft);
             // Not-a-number fails the comparison.
             let levels_are_good =
                 floor_ft < ceiling_ft && floor_ft.is_finite() && ceiling_ft.is_finite();
             if !levels_are_good {
                 self.defects.push(
-                    || format!("sectors[{i}].volumes[{v}].floor_ft"),
+                    || format!("{path}.volumes[{v}].floor_ft"),
                     format!(
                         "floor FL {} is not below ceiling FL {}",
                         ft_to_fl(floor_ft),
@@ -78,20 +98,13 @@ impl Build {
             match Polygon::new(volume.rings) {
                 Ok(polygon) => volumes.push(Volume { polygon, floor_ft, ceiling_ft }),
                 Err(error) => self.defects.push(
-                    || format!("sectors[{i}].volumes[{v}].polygon"),
+                    || format!("{path}.volumes[{v}].polygon"),
                     error.to_string(),
                     "closed rings of at least 4 positions whose edges do not cross (RFC 7946)",
                 ),
             }
         }
-        Sector {
-            name: parts.sector,
-            title: parts.name,
-            volumes,
-            horizontal_nm,
-            no_changes: parts.no_changes,
-            open: Vec::new(),
-        }
+        volumes
     }
 
     fn sector_limits(&mut self, i: usize, row: &CapacityParts) -> SectorLimits {
@@ -140,7 +153,9 @@ impl Build {
                 Ok(at) if times_are_good => periods[at]
                     .push((i, Period { from_s: row.from_s, until_s: row.until_s, limits })),
                 Ok(_) => {}
-                Err(_) => self.unknown_name("airport_capacities", i, "airport", &row.airport),
+                Err(_) => {
+                    self.unknown_name("airport_capacities", i, "airport", "airport", &row.airport)
+                }
             }
         }
         for (airport, periods) in airports.iter_mut().zip(periods) {
@@ -169,7 +184,13 @@ impl Build {
         lon_is_good && lat_is_good
     }
 
-    fn check_period(&mut self, table: &str, i: usize, from_s: f64, until_s: f64) -> bool {
+    pub(super) fn check_period(
+        &mut self,
+        table: &str,
+        i: usize,
+        from_s: f64,
+        until_s: f64,
+    ) -> bool {
         let good = from_s < until_s && from_s.is_finite() && until_s.is_finite();
         if !good {
             self.defects.push(
@@ -181,12 +202,26 @@ impl Build {
         good
     }
 
-    fn unknown_name(&mut self, table: &str, i: usize, field: &str, name: &str) {
+    pub(super) fn unknown_name(
+        &mut self,
+        table: &str,
+        i: usize,
+        field: &str,
+        kind: &str,
+        name: &str,
+    ) {
         self.defects.push(
             || format!("{table}[{i}].{field}"),
-            format!("`{name}` is no {field} of this day"),
-            format!("name one of the day's {field}s"),
+            format!("`{name}` is no {kind} of this day"),
+            format!("name one of the day's {kind}s"),
         );
+    }
+
+    pub(super) fn check_level(&mut self, path: impl FnOnce() -> String, level_ft: f64) {
+        if !(-2000.0..=66_000.0).contains(&level_ft) {
+            let problem = format!("FL {} is no level", ft_to_fl(level_ft));
+            self.defects.push(path, problem, "FL -20 to 660");
+        }
     }
 
     /// Periods sorted by time; overlapping ones are a defect of the later row.
