@@ -9,11 +9,11 @@ use crate::tables::time::parse_utc;
 use rimeshift_proto::v1::constraint::Kind;
 use rimeshift_proto::v1::policy_value;
 use rimeshift_proto::v1::{
-    BetterOptionConstraint, BrokenRule, ChangeRule, Constraint, Decision, DirectionLevels,
-    DirectionLevelsList, Exchange, FuelLimitConstraint, LoadConstraint, LoadMeasure,
-    NotWorthItConstraint, OwnChangeConstraint, Place, PlanLimitConstraint, PlannedStretch,
-    PolicySetting, PolicyValue, Reason, SeparationConstraint, SeparationRiskConstraint, Stopped,
-    Stretch, Verdict, place,
+    BetterOptionConstraint, BrokenRule, ByHandConstraint, ChangeRule, Constraint, Decision,
+    DirectionLevels, DirectionLevelsList, Exchange, FuelLimitConstraint, LoadConstraint,
+    LoadMeasure, NotWorthItConstraint, OwnChangeConstraint, Place, PlanLimitConstraint,
+    PlannedStretch, PolicySetting, PolicyValue, Reason, SeparationConstraint,
+    SeparationRiskConstraint, Stopped, Stretch, Verdict, place,
 };
 use serde::{Deserialize, Serialize};
 use serde_json::Value;
@@ -82,6 +82,8 @@ pub(crate) struct ReasonDocument {
     option: Option<u32>,
     #[serde(skip_serializing_if = "Option::is_none")]
     sector: Option<String>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    restriction: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]
     airport: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]
@@ -292,7 +294,10 @@ impl ReasonDocument {
             ..ReasonDocument::default()
         };
         match &constraint.kind {
-            None | Some(Kind::OwnChange(_) | Kind::BetterOption(_) | Kind::NotWorthIt(_)) => reason,
+            None
+            | Some(
+                Kind::OwnChange(_) | Kind::BetterOption(_) | Kind::NotWorthIt(_) | Kind::ByHand(_),
+            ) => reason,
             Some(Kind::Load(load)) => {
                 let name = names::place(load.place.as_ref()).to_owned();
                 let at_airport = matches!(
@@ -338,6 +343,7 @@ impl ReasonDocument {
             Some(Kind::Invalid(broken)) => ReasonDocument {
                 rule: Some(names::rule(broken.rule)),
                 sector: broken.sector.clone(),
+                restriction: broken.restriction.clone(),
                 time: rfc3339(broken.time.as_ref()),
                 limit: broken.level_ft.map(|feet| feet / 100.0),
                 ..reason
@@ -375,6 +381,7 @@ impl ReasonDocument {
                 Kind::BetterOption(BetterOptionConstraint { taken: taken.unwrap_or(0) })
             }
             "not-worth-it" => Kind::NotWorthIt(NotWorthItConstraint {}),
+            "by-hand" => Kind::ByHand(ByHandConstraint {}),
             "invalid" => Kind::Invalid(self.broken_rule(time)),
             kind => Kind::Load(self.load(load_measure(kind)?)?),
         };
@@ -393,6 +400,7 @@ impl ReasonDocument {
             track_deg: None,
             sector: self.sector.clone(),
             time,
+            restriction: self.restriction.clone(),
         }
     }
 

@@ -59,6 +59,7 @@ pub(crate) fn reason_kind(constraint: &Constraint) -> &'static str {
         Some(Kind::PlanLimit(_)) => "plan-limit",
         Some(Kind::BetterOption(_)) => "better-option",
         Some(Kind::NotWorthIt(_)) => "not-worth-it",
+        Some(Kind::ByHand(_)) => "by-hand",
         Some(Kind::Invalid(_)) => "invalid",
     }
 }
@@ -172,6 +173,11 @@ pub(crate) fn broken_rule(broken: &BrokenRule) -> String {
             broken.sector.as_deref().unwrap_or("?"),
             figures::second(broken.time.as_ref())
         ),
+        ChangeRule::Restriction => format!(
+            "it would be inside restriction {} at {}, where the flight is not as filed",
+            broken.restriction.as_deref().unwrap_or("?"),
+            figures::second(broken.time.as_ref())
+        ),
     }
 }
 
@@ -213,6 +219,7 @@ pub(crate) fn constraint(constraint: &Constraint) -> String {
             format!("option {} is better for the plan", better.taken)
         }
         Some(Kind::NotWorthIt(_)) => "its net benefit is not positive".to_owned(),
+        Some(Kind::ByHand(_)) => "it was decided so by hand".to_owned(),
         Some(Kind::Invalid(broken)) => broken_rule(broken),
     }
 }

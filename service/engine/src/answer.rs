@@ -1,6 +1,7 @@
 //! What the engine answers, as plain public data. Words for people are made elsewhere.
 
-use crate::ids::{AirportId, FlightId, ProposalId, SectorId};
+use crate::day::HandDecision;
+use crate::ids::{AirportId, FlightId, ProposalId, RestrictionId, SectorId};
 
 /// An interval in which two flights are closer than their minima allow.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -143,6 +144,13 @@ pub enum Rule {
         /// When it is first so, seconds of the day.
         time_s: f64,
     },
+    /// Inside a restriction in force, at a place where the filed profile is not.
+    Restriction {
+        /// The restriction.
+        restriction: RestrictionId,
+        /// When it is first so, seconds of the day.
+        time_s: f64,
+    },
 }
 
 /// One constraint that keeps an alternative out, with its numbers.
@@ -208,6 +216,8 @@ pub enum Constraint {
     },
     /// Its net benefit is not positive.
     NotWorthIt,
+    /// It was decided so by hand.
+    ByHand,
     /// It breaks a rule of level changes.
     Invalid(Rule),
 }
@@ -354,6 +364,8 @@ pub struct Plans {
     pub bound: Option<f64>,
     /// Why the search stopped.
     pub stopped: Stopped,
+    /// Decisions by hand that can't be met and were planned around.
+    pub unmet: Vec<HandDecision>,
 }
 
 impl Plans {

@@ -8,7 +8,7 @@ use crate::answer::{Loss, Rule};
 use crate::change::Change;
 use crate::day::{Day, Flight};
 use crate::ids::{FlightId, Id, IdVec, SectorId};
-use crate::load::{DayLoads, FlightLoad, SectorIndex, Visit};
+use crate::load::{DayLoads, FlightLoad, RestrictionIndex, SectorIndex, Visit};
 use crate::path::{Changed, Path, Track};
 use crate::separation::{HorizontalMinimum, Scene, Version};
 use crate::units::nm_to_m;
@@ -22,6 +22,8 @@ pub struct Traffic {
     pub tracks: Arc<IdVec<FlightId, Track>>,
     /// Where sectors are.
     pub sectors: SectorIndex,
+    /// Where restrictions are.
+    pub restrictions: RestrictionIndex,
     /// What every filed flight is counted for.
     pub filed: IdVec<FlightId, FlightLoad>,
     /// What the filed day counts.
@@ -46,6 +48,7 @@ impl Traffic {
         let tracks: Vec<Track> = flights.par_iter().map(|f| Track::new(&f.profile)).collect();
         let tracks: Arc<IdVec<FlightId, Track>> = Arc::new(tracks.into());
         let sectors = SectorIndex::new(&day);
+        let restrictions = RestrictionIndex::new(&day);
         let own_minima = day.sectors.iter().any(|s| s.horizontal_nm.is_some());
         let closed_to_changes = day.sectors.iter().any(|s| s.no_changes);
         let filed: Vec<FlightLoad> = (0..flights.len())
@@ -64,7 +67,17 @@ impl Traffic {
         };
         let scene = Scene::new(&day, Arc::clone(&tracks), minima.into());
         let filed = filed.into();
-        Self { day, tracks, sectors, filed, loads, scene, own_minima, closed_to_changes }
+        Self {
+            day,
+            tracks,
+            sectors,
+            restrictions,
+            filed,
+            loads,
+            scene,
+            own_minima,
+            closed_to_changes,
+        }
     }
 
     /// The flight of an id.
@@ -115,9 +128,17 @@ impl Traffic {
     }
 
     /// Why a change may not be made where it is: it is off its filed level in a sector that allows
-    /// no changes, open or not.
+    /// no changes, open or not, or inside a restriction in force.
     #[must_use]
     pub fn forbidden(&self, flight: FlightId, change: &Change) -> Option<Rule> {
+        self.off_level_where_forbidden(flight, change).or_else(|| {
+            let path = self.path(flight, Some(&change.changed));
+            let entered = self.restrictions.entered(&self.day, self.flight(flight), &path);
+            entered.map(|(restriction, time_s)| Rule::Restriction { restriction, time_s })
+        })
+    }
+
+    fn off_level_where_forbidden(&self, flight: FlightId, change: &Change) -> Option<Rule> {
         if !self.closed_to_changes {
             return None;
         }

@@ -164,7 +164,7 @@ fn options(request: &v1::FindPlansRequest, fields: &mut Fields) -> FindOptions {
     if !(0.0..=1.0).contains(&gap) {
         fields.push(|| "gap".to_owned(), format!("`{gap}` is out of range"), "0 to 1");
     }
-    FindOptions { plans: plans as usize, seed: request.seed, work, gap }
+    FindOptions { plans: plans as usize, seed: request.seed, work, gap, ..default }
 }
 
 fn max_time(time: Option<prost_types::Duration>, fields: &mut Fields) -> Option<Duration> {
@@ -202,6 +202,23 @@ fn run(
         PlanError::Unheeded { key } => ServiceError::Precondition {
             subject: format!("policy key `{key}`"),
             problem: "plans do not heed it yet; leave it at its default".to_owned(),
+        },
+        PlanError::UnmetDecision { decision, breaks } => ServiceError::Precondition {
+            subject: ready.answers().hand_decision(&decision),
+            problem: format!(
+                "can't be met: {}",
+                breaks
+                    .iter()
+                    .map(|reason| ready.answers().in_words(reason))
+                    .collect::<Vec<_>>()
+                    .join("; ")
+            ),
+        },
+        PlanError::GrantRate => ServiceError::Precondition {
+            subject: "policy key `min_grant_rate_per_operator`".to_owned(),
+            problem: "no plan was found that grants every operator so much; lower it, or give the \
+                      search more time"
+                .to_owned(),
         },
         PlanError::Cancelled => ServiceError::Cancelled,
         defect @ (PlanError::FailedAudit(_) | PlanError::Model(_)) => {

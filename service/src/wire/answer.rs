@@ -8,7 +8,7 @@ use rimeshift_engine::answer::{
     Verdict,
 };
 use rimeshift_engine::day::Day;
-use rimeshift_engine::ids::{FlightId, ProposalId, SectorId};
+use rimeshift_engine::ids::{FlightId, ProposalId, RestrictionId, SectorId};
 use rimeshift_engine::units::m_to_nm;
 use rimeshift_proto::v1;
 
@@ -40,8 +40,15 @@ impl Answers<'_> {
         self.day.proposals.get(id).map_or_else(String::new, |proposal| proposal.name.clone())
     }
 
-    fn sector(&self, id: SectorId) -> String {
+    pub(super) fn sector(&self, id: SectorId) -> String {
         self.day.sectors.get(id).map_or_else(String::new, |sector| sector.name.clone())
+    }
+
+    fn restriction(&self, id: RestrictionId) -> String {
+        self.day
+            .restrictions
+            .get(id)
+            .map_or_else(String::new, |restriction| restriction.name.clone())
     }
 
     pub(crate) fn place(&self, place: Place) -> v1::Place {
@@ -150,6 +157,11 @@ impl Answers<'_> {
                 time: self.time(*time_s),
                 ..plain(Wire::NoChangesSector)
             },
+            Rule::Restriction { restriction, time_s } => v1::BrokenRule {
+                restriction: Some(self.restriction(*restriction)),
+                time: self.time(*time_s),
+                ..plain(Wire::Restriction)
+            },
         }
     }
 
@@ -199,6 +211,7 @@ impl Answers<'_> {
                 Kind::BetterOption(v1::BetterOptionConstraint { taken: *taken })
             }
             Constraint::NotWorthIt => Kind::NotWorthIt(v1::NotWorthItConstraint {}),
+            Constraint::ByHand => Kind::ByHand(v1::ByHandConstraint {}),
             Constraint::Invalid(rule) => Kind::Invalid(self.rule(rule)),
         };
         v1::Constraint { kind: Some(kind) }

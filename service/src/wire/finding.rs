@@ -4,6 +4,7 @@ use rimeshift_engine::answer::LoadMeasure;
 use rimeshift_engine::audit::{
     AuditReport, Checked, Figure, Finding, NotJudged, ReasonKind, WrittenFault,
 };
+use rimeshift_engine::day::HandSubject;
 use rimeshift_engine::units::m_to_nm;
 use rimeshift_proto::v1;
 use rimeshift_proto::v1::FindingKind as Kind;
@@ -159,6 +160,17 @@ fn finding(answers: Answers<'_>, finding: &Finding) -> v1::Finding {
             claimed: Some(*limit),
             found: Some(*value),
             ..said(Kind::PlanLimit, format!("{key} is {limit}, and the plan has {value}"))
+        },
+        Finding::NotAsDecided { decision } => v1::Finding {
+            proposal: match decision.about {
+                HandSubject::Proposal(id) => about(id).unwrap_or_default(),
+                HandSubject::Flight(_) => String::new(),
+            },
+            flight: match decision.about {
+                HandSubject::Flight(id) => answers.flight(id),
+                HandSubject::Proposal(_) => String::new(),
+            },
+            ..said(Kind::PlanLimit, "a decision by hand was not kept".to_owned())
         },
         Finding::FuelLimit { proposal, extra_fuel_kg, limit_kg } => v1::Finding {
             claimed: Some(*limit_kg),

@@ -15,3 +15,4 @@ pub(crate) mod policy;
 pub(crate) mod question;
 pub(crate) mod rows;
 pub(crate) mod to_wire;
+mod words;

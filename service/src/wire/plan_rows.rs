@@ -72,6 +72,7 @@ impl<'a> ReceivingPlan<'a> {
             gap,
             decisions: self.decisions,
             written: (!written.is_empty()).then_some(written),
+            by_hand: None,
         })
     }
 
@@ -233,6 +234,7 @@ fn reason_kind(constraint: Option<v1::Constraint>) -> Option<ReasonKind> {
         Kind::PlanLimit(_) => ReasonKind::PlanLimit,
         Kind::BetterOption(_) => ReasonKind::BetterOption,
         Kind::NotWorthIt(_) => ReasonKind::NotWorthIt,
+        Kind::ByHand(_) => ReasonKind::ByHand,
         Kind::Invalid(_) => ReasonKind::Invalid,
     })
 }

@@ -3,6 +3,7 @@
 use crate::answer::{
     Constraint, Decision, Exchange, LoadMeasure, MovedProfile, Plan, Reason, Verdict,
 };
+use crate::day::HandDecision;
 use crate::ids::{FlightId, ProposalId};
 
 /// A plan as it is handed out or read from its files; nothing in it is believed.
@@ -18,6 +19,8 @@ pub struct PlanUnderAudit {
     pub decisions: Vec<ClaimedDecision>,
     /// The new profiles as written, where they are judged too.
     pub written: Option<Vec<MovedProfile>>,
+    /// The decisions by hand that it was made under; `None`: those of the day.
+    pub by_hand: Option<Vec<HandDecision>>,
 }
 
 /// The verdict on one proposal, as claimed.
@@ -106,6 +109,7 @@ impl PlanUnderAudit {
             gap: None,
             decisions: plan.decisions.iter().map(ClaimedDecision::from).collect(),
             written: Some(plan.moved.clone()),
+            by_hand: None,
         }
     }
 }
@@ -149,6 +153,7 @@ impl From<&Reason> for ClaimedReason {
             Constraint::PlanLimit { .. } => ReasonKind::PlanLimit,
             Constraint::BetterOption { .. } => ReasonKind::BetterOption,
             Constraint::NotWorthIt => ReasonKind::NotWorthIt,
+            Constraint::ByHand => ReasonKind::ByHand,
             Constraint::Invalid(_) => ReasonKind::Invalid,
         };
         Self { option: Some(reason.option), kind }

@@ -165,7 +165,7 @@ pub(super) fn alone<'d>(
             },
         )?;
     let flown = world.fly(flight, combined.path);
-    match world.forbidden_change(&flown, lean) {
+    match world.forbidden_change(flight, &flown, lean) {
         None => Ok(Alone { flown }),
         Some(rule) => Err(rule),
     }
@@ -211,10 +211,11 @@ pub(super) fn judge_validity(world: &World<'_>, decided: &Decided<'_, '_>) -> (V
     (judged.into_iter().filter_map(|(finding, _)| finding).collect(), derived)
 }
 
-/// Moved flights that are off their filed level where no changes are allowed.
+/// Moved flights that are off their filed level where no changes are allowed, or inside a
+/// restriction.
 pub(super) fn judge_forbidden_places(world: &World<'_>, findings: &mut Vec<Finding>) {
     for (&flight, flown) in &world.planned {
-        if let Some(rule) = world.forbidden_change(flown, Lean::ForPlan) {
+        if let Some(rule) = world.forbidden_change(flight, flown, Lean::ForPlan) {
             findings.push(Finding::ChangedWhereForbidden { flight, rule });
         }
     }

@@ -15,6 +15,8 @@ use crate::day::{Day, Flight, Policy, period_at, smallest_limit};
 use crate::ids::{AirportId, SectorId};
 use crate::units::{SECONDS_PER_HOUR, SECONDS_PER_MINUTE};
 
+/// Nothing farther than this from 00:00 is counted, seconds.
+const FARTHEST_S: f64 = 20.0 * 86_400.0;
 /// Level flight shorter than this does not end a climb or descent, seconds.
 const LEVEL_BREAK_S: f64 = 1.0;
 
@@ -256,11 +258,69 @@ pub(super) struct Compared {
     pub(super) undecided: u64,
 }
 
+/// What traffic known only as counts adds to each count, filed and planned alike.
+#[derive(Debug, Clone, Default)]
+struct Background {
+    by: BTreeMap<(Counted, i64), f64>,
+}
+
+impl Background {
+    fn new(day: &Day) -> Self {
+        let mut by: BTreeMap<(Counted, i64), f64> = BTreeMap::new();
+        let step_s = day.policy.entry_step_s();
+        let whole = |s: f64| s.clamp(-FARTHEST_S, FARTHEST_S);
+        for row in &day.background {
+            let open = &day.sectors[row.sector].open;
+            let (from_s, until_s) = (whole(row.from_s), whole(row.until_s));
+            let first = (from_s / SECONDS_PER_MINUTE).floor() as i64;
+            for m in first..=(until_s / SECONDS_PER_MINUTE).ceil() as i64 {
+                let time_s = m as f64 * SECONDS_PER_MINUTE;
+                if from_s <= time_s && time_s < until_s && period_at(open, time_s).is_some() {
+                    *by.entry((Counted::Occupancy(row.sector), m)).or_default() += row.aircraft;
+                }
+            }
+            let Some(entries) = row.entries else { continue };
+            let first = ((from_s - SECONDS_PER_HOUR) / step_s).floor() as i64;
+            for w in first..=(until_s / step_s).ceil() as i64 {
+                let window_s = w as f64 * step_s;
+                let in_window_s: f64 = open
+                    .iter()
+                    .map(|period| {
+                        let begin_s = window_s.max(from_s).max(period.from_s);
+                        let end_s = (window_s + SECONDS_PER_HOUR).min(until_s).min(period.until_s);
+                        (end_s - begin_s).max(0.0)
+                    })
+                    .sum();
+                if in_window_s > 0.0 {
+                    let share = in_window_s / (row.until_s - row.from_s);
+                    *by.entry((Counted::Entries(row.sector), w)).or_default() += entries * share;
+                }
+            }
+        }
+        Self { by }
+    }
+
+    fn at(&self, what: Counted, n: i64) -> f64 {
+        if self.by.is_empty() {
+            return 0.0;
+        }
+        self.by.get(&(what, n)).copied().unwrap_or(0.0)
+    }
+}
+
 /// The filed day beside the planned one.
 pub(super) struct Loads<'d> {
-    pub(super) day: &'d Day,
-    pub(super) filed: Counts,
-    pub(super) planned: Counts,
+    day: &'d Day,
+    filed: Counts,
+    planned: Counts,
+    background: Background,
+}
+
+impl<'d> Loads<'d> {
+    /// The counts of a day's flights, filed and planned, beside its traffic known only as counts.
+    pub(super) fn new(day: &'d Day, filed: Counts, planned: Counts) -> Self {
+        Self { day, filed, planned, background: Background::new(day) }
+    }
 }
 
 impl Loads<'_> {
@@ -297,7 +357,9 @@ impl Loads<'_> {
     fn is_lasting(&self, sector: SectorId, minute: i64, count: impl Fn(i64) -> i64) -> bool {
         let before = self.day.policy.lasting_min as i64;
         (minute - before..=minute).all(|m| {
-            self.lasting_limit(sector, m).is_some_and(|limit| count(m) as f64 > limit + COUNT)
+            let more = self.background.at(Counted::Occupancy(sector), m);
+            let over = |limit: f64| count(m) as f64 + more > limit + COUNT;
+            self.lasting_limit(sector, m).is_some_and(over)
         })
     }
 
@@ -310,14 +372,16 @@ impl Loads<'_> {
             for (i, &planned) in series.counts.iter().enumerate() {
                 let n = series.first + i as i64;
                 let filed = self.filed.get(what, n);
+                // Limits are for all traffic, so what others take of them is taken off first.
+                let more = self.background.at(what, n);
                 if let Some(limit) = self.limit(what, n).filter(|_| planned.high > 0) {
                     match what {
                         Counted::Occupancy(_) => compared.minutes += 1,
                         _ => compared.windows += 1,
                     }
-                    if exceeds(planned.low, filed.high, limit) {
-                        runs.add(n, planned.low, filed.high, limit);
-                    } else if exceeds(planned.high, filed.low, limit) {
+                    if exceeds(planned.low, filed.high, limit - more) {
+                        runs.add(n, planned.low, filed.high, more, limit);
+                    } else if exceeds(planned.high, filed.low, limit - more) {
                         compared.undecided += 1;
                     }
                 }
@@ -329,7 +393,7 @@ impl Loads<'_> {
                         && self.is_lasting(sector, n, planned_low)
                         && !(self.is_lasting(sector, n, filed_high) && filed.high >= planned.low)
                     {
-                        lasting.add(n, planned.low, filed.high, limit);
+                        lasting.add(n, planned.low, filed.high, more, limit);
                     }
                 }
             }
@@ -356,7 +420,9 @@ impl Loads<'_> {
         };
         change.iter().filter(|(_, by)| by.high > 0 || by.low > 0).all(|(&(what, n), _)| {
             let filed = self.filed.get(what, n);
-            let within = self.limit(what, n).is_none_or(|l| !exceeds(high(what, n), filed.low, l));
+            let more = self.background.at(what, n);
+            let over = |limit: f64| exceeds(high(what, n), filed.low, limit - more);
+            let within = !self.limit(what, n).is_some_and(over);
             within && self.has_lasting_room(what, n, |m| high(what, m))
         })
     }
@@ -396,13 +462,14 @@ struct Runs {
 struct Run {
     first: i64,
     last: i64,
-    count: i64,
-    filed: i64,
+    count: f64,
+    filed: f64,
     limit: f64,
 }
 
 impl Runs {
-    fn add(&mut self, n: i64, count: i64, filed: i64, limit: f64) {
+    fn add(&mut self, n: i64, count: i64, filed: i64, more: f64, limit: f64) {
+        let (count, filed) = (count as f64 + more, filed as f64 + more);
         match self.runs.last_mut() {
             Some(run) if run.last + 1 == n => {
                 run.last = n;
@@ -452,8 +519,8 @@ impl Runs {
             measure,
             from_s: run.first as f64 * step_s,
             until_s: run.last as f64 * step_s + length_s,
-            count: run.count as f64,
-            filed: run.filed as f64,
+            count: run.count,
+            filed: run.filed,
             limit: run.limit,
         })
     }

@@ -6,6 +6,7 @@
 
 use rayon::prelude::*;
 
+use super::by_hand::{is_granted, keeps_out};
 use super::claim::{ClaimedDecision, ReasonKind};
 use super::decisions::{Decided, alone, option_of};
 use super::figures::extra_fuel_kg;
@@ -43,7 +44,9 @@ fn try_all(world: &World<'_>, id: ProposalId, decision: &ClaimedDecision) -> (Ve
     let mut findings = Vec::new();
     let mut tried = 0;
     for alternative in &proposal.alternatives {
-        if taken.is_some_and(|g| g.alternative.option == alternative.option) {
+        if taken.is_some_and(|g| g.alternative.option == alternative.option)
+            || keeps_out(world, id, alternative.option)
+        {
             continue;
         }
         let mut instead = others.clone();
@@ -62,7 +65,11 @@ fn try_all(world: &World<'_>, id: ProposalId, decision: &ClaimedDecision) -> (Ve
             });
         }
     }
-    if taken.is_some() && decision.net_benefit <= 0.0 && could_fly(world, flight, &others) {
+    if taken.is_some()
+        && decision.net_benefit <= 0.0
+        && !is_granted(world, id)
+        && could_fly(world, flight, &others)
+    {
         findings.push(Finding::CouldDrop { proposal: id, net_benefit: decision.net_benefit });
     }
     (findings, tried)
@@ -148,7 +155,7 @@ fn could_fly<'d>(world: &World<'d>, flight: FlightId, grants: &[Grant<'d>]) -> b
         let lean = Lean::AgainstPlan;
         let Ok(one) = combine(world.day, world.tracks, flight, grants, lean) else { return false };
         changed = world.fly(flight, one.path);
-        if world.forbidden_change(&changed, lean).is_some() {
+        if world.forbidden_change(flight, &changed, lean).is_some() {
             return false;
         }
         &changed
@@ -217,10 +224,8 @@ fn is_false(
                 && policy.min_grant_rate_per_operator.is_none()
                 && policy.max_share_per_operator.is_none()
         }
-        ReasonKind::Load(_)
-        | ReasonKind::Separation
-        | ReasonKind::SeparationRisk
-        | ReasonKind::ByHand => false,
+        ReasonKind::Load(_) | ReasonKind::Separation | ReasonKind::SeparationRisk => false,
+        ReasonKind::ByHand => !keeps_out(world, id, option),
     }
 }
 

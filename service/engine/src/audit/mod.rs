@@ -26,6 +26,7 @@
 //! than `v`, the next look is due after `d / v` (sphere tracing: J. C. Hart, The Visual Computer
 //! 12, 1996, from memory).
 
+mod by_hand;
 mod claim;
 mod decisions;
 mod derive;
@@ -38,6 +39,7 @@ mod maximal;
 mod neighbours;
 mod path;
 mod report;
+mod restricted;
 mod separation;
 mod stretches;
 mod tolerances;
@@ -74,7 +76,8 @@ pub fn audit(day: &Day, plan: &PlanUnderAudit) -> AuditReport {
     let decided = decisions::match_decisions(day, plan, &mut report.findings);
     let combined = decisions::combined(day, &tracks, &decided.grants, &mut report.findings);
     let paths = combined.iter().map(|(&id, one)| (id, one.path.clone())).collect();
-    let world = World::new(day, &tracks, decided.grants.clone(), paths);
+    let by_hand = plan.by_hand.clone().unwrap_or_else(|| day.decisions.clone());
+    let world = World::new(day, &tracks, decided.grants.clone(), paths, by_hand);
     tracing::debug!("audit: days flown");
 
     decisions::judge_forbidden_places(&world, &mut report.findings);
@@ -90,6 +93,7 @@ pub fn audit(day: &Day, plan: &PlanUnderAudit) -> AuditReport {
     tracing::debug!("audit: separation judged");
     judge_load(&world, &mut report);
     report.findings.extend(limits::judge_limits(&world));
+    report.findings.extend(by_hand::judge_by_hand(&world));
     let AuditReport { findings, checked, not_judged } = &mut report;
     figures::judge_figures(&world, plan, &decided, &combined, (findings, not_judged, checked));
     if let Some(written) = &plan.written {

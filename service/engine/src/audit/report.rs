@@ -2,6 +2,7 @@
 
 use super::claim::ReasonKind;
 use crate::answer::{LoadMeasure, Place, Rule, Verdict};
+use crate::day::HandDecision;
 use crate::ids::{FlightId, ProposalId};
 
 /// The outcome of an audit.
@@ -223,6 +224,11 @@ pub enum Finding {
         value: f64,
         /// The limit.
         limit: f64,
+    },
+    /// What was decided by hand did not become of it.
+    NotAsDecided {
+        /// The decision.
+        decision: HandDecision,
     },
     /// A granted option takes more extra fuel than its sender accepts.
     FuelLimit {

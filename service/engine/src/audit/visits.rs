@@ -131,6 +131,16 @@ impl SectorMap<'_> {
     }
 }
 
+/// When a flight is inside the union of some volumes.
+pub(super) fn stays_in(volumes: &[Volume], path: &Path<'_>, as_filed: AsFiled) -> Vec<(f64, f64)> {
+    let volumes: Vec<&Volume> = volumes.iter().collect();
+    let look = Look { path, volumes: &volumes, degps: path.fastest_degps() };
+    let mut visits = Vec::new();
+    // The name does not matter.
+    look.visits(SectorId(0), (path.start_s(), path.end_s()), as_filed, &mut visits);
+    visits.iter().map(|visit| (visit.begin.time_s, visit.end.time_s)).collect()
+}
+
 /// Whether a box in degrees and that around a volume's outline meet, with room for rounding.
 fn boxes_meet([west, south, east, north]: [f64; 4], volume: &Volume) -> bool {
     let b = volume.polygon.bounds();

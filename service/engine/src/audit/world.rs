@@ -8,13 +8,14 @@ use super::derive::{Derived, derive};
 use super::load::{Counts, Loads, Traffic};
 use super::neighbours::Neighbours;
 use super::path::Path;
+use super::restricted::entered;
 use super::separation::{Craft, Minima, Pair, Spell, is_known, largest_minimum_m};
 use super::stretches::{Ground, Placed};
 use super::tolerances::{LEVEL_FT, Lean, TIME_S};
 use super::track::Track;
 use super::visits::{AsFiled, SectorMap, Visit};
 use crate::answer::Rule;
-use crate::day::{Alternative, Day};
+use crate::day::{Alternative, Day, HandDecision};
 use crate::ids::{FlightId, Id, ProposalId};
 use crate::units::fl_to_ft;
 
@@ -76,6 +77,8 @@ pub(super) struct World<'d> {
     pub(super) planned: BTreeMap<FlightId, Flown<'d>>,
     pub(super) grants: BTreeMap<FlightId, Vec<Grant<'d>>>,
     pub(super) loads: Loads<'d>,
+    /// The decisions by hand that the plan is made under.
+    pub(super) by_hand: Vec<HandDecision>,
     neighbours: Neighbours,
 }
 
@@ -92,6 +95,7 @@ impl<'d> World<'d> {
         tracks: &'d [Track],
         grants: BTreeMap<FlightId, Vec<Grant<'d>>>,
         paths: BTreeMap<FlightId, Path<'d>>,
+        by_hand: Vec<HandDecision>,
     ) -> Self {
         let map = SectorMap::new(day);
         let filed: Vec<Flown<'d>> = tracks
@@ -111,11 +115,12 @@ impl<'d> World<'d> {
         for flown in &filed {
             counts.add(day, &flown.traffic);
         }
-        let mut loads = Loads { day, filed: counts.clone(), planned: counts };
+        let mut planned_counts = counts.clone();
         for (id, flown) in &planned {
-            loads.planned.remove(day, &filed[id.index()].traffic);
-            loads.planned.add(day, &flown.traffic);
+            planned_counts.remove(day, &filed[id.index()].traffic);
+            planned_counts.add(day, &flown.traffic);
         }
+        let loads = Loads::new(day, counts, planned_counts);
         let current: Vec<&Path<'d>> = filed
             .iter()
             .enumerate()
@@ -126,7 +131,7 @@ impl<'d> World<'d> {
         let fastest_mps = current.iter().map(|p| p.fastest_mps()).fold(0.0, f64::max);
         let floor_ft = fl_to_ft(day.policy.separation_floor_fl);
         let neighbours = Neighbours::new(&current, largest_minimum_m(day), fastest_mps, floor_ft);
-        Self { day, tracks, map, filed, planned, grants, loads, neighbours }
+        Self { day, tracks, map, filed, planned, grants, loads, by_hand, neighbours }
     }
 
     /// A flight as the finished plan flies it.
@@ -217,8 +222,21 @@ impl<'d> World<'d> {
         spells
     }
 
-    /// Where a profile of a flight is off its filed level inside a sector that forbids changes.
-    pub(super) fn forbidden_change(&self, flown: &Flown<'d>, lean: Lean) -> Option<Rule> {
+    /// Where a profile of a flight may not be: off its filed level inside a sector that forbids
+    /// changes, or inside a restriction.
+    pub(super) fn forbidden_change(
+        &self,
+        flight: FlightId,
+        flown: &Flown<'d>,
+        lean: Lean,
+    ) -> Option<Rule> {
+        self.off_level_where_forbidden(flown, lean).or_else(|| {
+            let filed = &self.filed[flight.index()].path;
+            entered(self.day, &self.day.flights[flight], filed, &flown.path, lean)
+        })
+    }
+
+    fn off_level_where_forbidden(&self, flown: &Flown<'d>, lean: Lean) -> Option<Rule> {
         let allowed_ft = match lean {
             Lean::ForPlan => LEVEL_FT,
             Lean::AgainstPlan => 1e-6,

@@ -57,6 +57,12 @@ impl Times {
         first..last + 1
     }
 
+    /// The windows that share time with a period, and perhaps one more on either side.
+    pub(super) fn windows_over(&self, from_s: f64, until_s: f64) -> Range<i32> {
+        let near = |time_s: f64| time_s.clamp(-FARTHEST_S, FARTHEST_S);
+        self.windows_around(near(from_s)).start..self.windows_around(near(until_s)).end
+    }
+
     /// The whole minutes m with `from_s` ≤ m < `until_s`.
     #[must_use]
     pub fn minutes_within(&self, from_s: f64, until_s: f64) -> Range<i32> {

@@ -1,6 +1,7 @@
 //! The counts and limits of the filed day, and how a changed flight would alter the counts.
 
 use super::allowed::{allowed, room};
+use super::background;
 use super::cells::{Cell, Clock, Counts, LimitSteps, Times};
 use super::flight_load::FlightLoad;
 use super::lasting::Lasting;
@@ -116,8 +117,13 @@ impl DayLoads {
                 });
             }
         }
-        // Traffic known only as counts is to be added to `filed` here, before lasting overloads
-        // are looked for: it then counts in filed and planned alike.
+        // Before lasting overloads are looked for: it counts in filed and planned alike.
+        background::count(day, loads.times, &mut |kind, place, range, amount| {
+            if let Some(number) = MEASURES.iter().position(|measure| measure.kind() == kind) {
+                let series = loads.layout.series(number, place) as usize;
+                loads.series[series].filed.add(range, amount);
+            }
+        });
         for series in &mut loads.series {
             let filed = &series.filed;
             series.lasting.find_filed(filed.range(), |minute| filed.at(minute));

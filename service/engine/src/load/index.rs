@@ -1,7 +1,7 @@
 //! Which volumes may lie around a place: a grid over longitude and latitude.
 
 use super::piece::Piece;
-use crate::day::{Day, Volume};
+use crate::day::{Day, Sector, Volume};
 use crate::geometry::polygon::Polygon;
 use crate::ids::SectorId;
 
@@ -115,11 +115,14 @@ impl SectorIndex {
     /// Indexes every volume of a day's sectors, closed ones included.
     #[must_use]
     pub fn new(day: &Day) -> Self {
-        let volumes: Vec<(SectorId, Volume)> = day
-            .sectors
-            .iter_with_id()
-            .flat_map(|(id, sector)| sector.volumes.iter().map(move |v| (id, v.clone())))
-            .collect();
+        let of_sector = |(id, sector): (SectorId, &Sector)| {
+            sector.volumes.iter().map(move |v| (id, v.clone())).collect::<Vec<_>>()
+        };
+        Self::of(day.sectors.iter_with_id().flat_map(of_sector).collect())
+    }
+
+    /// Indexes volumes, each of the sector beside it.
+    pub(super) fn of(volumes: Vec<(SectorId, Volume)>) -> Self {
         let grid = Grid::around(&volumes);
         let mut lists: Vec<Vec<Entry>> = vec![Vec::new(); grid.columns * grid.rows];
         for (index, (_, volume)) in volumes.iter().enumerate() {

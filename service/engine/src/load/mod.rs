@@ -28,6 +28,7 @@
 
 mod airports;
 mod allowed;
+mod background;
 mod cells;
 mod day_loads;
 mod entries;
@@ -40,6 +41,7 @@ mod occupancy;
 mod piece;
 mod planned;
 mod report;
+mod restricted;
 mod runs;
 
 #[cfg(test)]
@@ -54,3 +56,4 @@ pub use index::SectorIndex;
 pub use lasting::LastingRule;
 pub use measure::{MEASURES, Measure, Places};
 pub use planned::PlannedLoads;
+pub use restricted::RestrictionIndex;

@@ -1,11 +1,12 @@
 //! Finding plans: the search is run, its choices become plans, and the audit has the last word.
 
+use super::by_hand::{self, Unmet};
 use super::decide::plan_of;
 use super::options::TooManyCombinations;
 use super::problem::Problem;
-use crate::answer::{Plans, Stopped};
+use crate::answer::{Plans, Reason, Stopped};
 use crate::audit::{AuditReport, PlanUnderAudit, audit};
-use crate::day::{Policy, SeparationRule};
+use crate::day::{HandDecision, Policy, SeparationRule};
 use crate::search::{self, Index, RankOptions, SolveOptions, State, choice, rank};
 use crate::traffic::Traffic;
 
@@ -23,12 +24,23 @@ pub struct FindOptions {
     pub work: u64,
     /// Stop once the proven gap is at most this; 0 asks for the optimum.
     pub gap: f64,
+    /// Decisions by hand beside those of the day.
+    pub decisions: Vec<HandDecision>,
+    /// What to do about those that can't be met.
+    pub unmet: Unmet,
 }
 
 impl Default for FindOptions {
     fn default() -> Self {
         let solve = SolveOptions::default();
-        Self { plans: 1, seed: solve.seed, work: solve.work, gap: solve.gap }
+        Self {
+            plans: 1,
+            seed: solve.seed,
+            work: solve.work,
+            gap: solve.gap,
+            decisions: Vec::new(),
+            unmet: Unmet::Refuse,
+        }
     }
 }
 
@@ -94,6 +106,17 @@ pub enum PlanError {
     /// The search could not use the model: a defect of this program.
     #[error("the search could not use the model: {0}")]
     Model(search::Defect),
+    /// A decision by hand can't be met.
+    #[error("a decision by hand breaks {} limits", .breaks.len())]
+    UnmetDecision {
+        /// The decision.
+        decision: HandDecision,
+        /// What it breaks, beside the other decisions.
+        breaks: Vec<Reason>,
+    },
+    /// No plan grants every operator the policy's `min_grant_rate_per_operator`.
+    #[error("no plan was found that grants every operator its least share")]
+    GrantRate,
     /// The caller has gone before there was a plan.
     #[error("the caller has gone")]
     Cancelled,
@@ -112,7 +135,13 @@ pub fn find(
     if let Some(key) = unheeded(&traffic.day.policy) {
         return Err(PlanError::Unheeded { key });
     }
-    let problem = Problem::new(traffic, watch)?;
+    let mut problem = Problem::new(traffic, watch)?;
+    let mut decisions = traffic.day.decisions.clone();
+    decisions.extend(&options.decisions);
+    decisions.sort_unstable();
+    decisions.dedup();
+    let unmet = by_hand::fix(traffic, &mut problem, &decisions, options.unmet)?;
+    let problem = problem;
     tracing::debug!(
         groups = problem.model.groups.len(),
         rows = problem.model.rows.len(),
@@ -139,6 +168,10 @@ pub fn find(
     let search_watch = search::Watch { stop: &stop, progress: &progress };
     let solutions = rank(&problem.model, &rank_options, search_watch).map_err(PlanError::Model)?;
     tracing::debug!("searched");
+    if solutions.first().is_none_or(|best| !best.violations.is_empty()) {
+        // All else holds where nothing is flown but what was decided by hand, which was tried.
+        return Err(PlanError::GrantRate);
+    }
     let index = Index::new(&problem.model).map_err(PlanError::Model)?;
     let best = solutions.first();
     let bound = best.and_then(|s| s.bound).map(amount);
@@ -149,8 +182,9 @@ pub fn find(
         let plan = plan_of(traffic, &problem, &index, &choices);
         watch.wanted()?;
         tracing::debug!("plan made");
-        let report =
-            audit(&traffic.day, &PlanUnderAudit::of(&plan, bound.filter(|_| plans.is_empty())));
+        let mut claim = PlanUnderAudit::of(&plan, bound.filter(|_| plans.is_empty()));
+        claim.by_hand = Some(problem.by_hand.clone());
+        let report = audit(&traffic.day, &claim);
         tracing::debug!("plan audited");
         if !report.passed() {
             let some = &report.findings[..report.findings.len().min(MOST_LOGGED)];
@@ -165,20 +199,12 @@ pub fn find(
         Some(search::Stopped::Asked) => (watch.stop)().unwrap_or(Stopped::Cancelled),
         Some(search::Stopped::Work | search::Stopped::Infeasible) | None => Stopped::Work,
     };
-    Ok(Plans { plans, bound, stopped })
+    Ok(Plans { plans, bound, stopped, unmet })
 }
 
 /// A key of the policy that would change plans but is not heeded yet.
 fn unheeded(policy: &Policy) -> Option<&'static str> {
-    if policy.separation != SeparationRule::Nominal {
-        Some("separation")
-    } else if policy.min_grant_rate_per_operator.is_some() {
-        Some("min_grant_rate_per_operator")
-    } else if policy.max_share_per_operator.is_some() {
-        Some("max_share_per_operator")
-    } else {
-        None
-    }
+    (policy.separation != SeparationRule::Nominal).then_some("separation")
 }
 
 /// Takes away grants that gain nothing, where the plan stays feasible without them: an option whose

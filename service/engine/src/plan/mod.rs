@@ -5,8 +5,10 @@
 //! `refusal` says what blocks an option, and which grants would have to go for it. `state` is the
 //! day as a plan makes it, against which single questions are answered too.
 
+mod by_hand;
 mod decide;
 mod find;
+mod operators;
 mod options;
 mod problem;
 mod quantum;
@@ -14,7 +16,10 @@ mod refusal;
 mod state;
 #[cfg(test)]
 mod tests;
+#[cfg(test)]
+mod tests_rules;
 
+pub use by_hand::Unmet;
 pub(crate) use decide::planned_stretches;
 pub use find::{FindOptions, PlanError, Progress, Watch, find};
 pub use options::TooManyCombinations;

@@ -11,9 +11,11 @@ use std::collections::BTreeMap;
 use rayon::prelude::*;
 
 use super::find::{PlanError, Watch};
+use super::operators;
 use super::options::{Asking, Combination, Grant, Judged, combine_all, judge_all};
 use super::quantum::Quantum;
 use crate::change::Change;
+use crate::day::HandDecision;
 use crate::ids::{FlightId, IdVec, ProposalId};
 use crate::load::{Cell, Difference, Which};
 use crate::search::{AnyOf, Choice, Clash, Cost, Group, Model, Row, choice};
@@ -29,6 +31,8 @@ pub(super) struct Problem {
     pub(super) group_of: BTreeMap<FlightId, u32>,
     pub(super) model: Model,
     pub(super) quantum: Quantum,
+    /// The decisions by hand that are in force.
+    pub(super) by_hand: Vec<HandDecision>,
 }
 
 impl Problem {
@@ -61,7 +65,8 @@ impl Problem {
             let terms = (0u32..).zip(&model.groups).flat_map(moved).collect();
             model.rows.push(Row { slack: most.min(1e9) as i64, terms });
         }
-        Ok(Self { judged, asking, group_of, model, quantum })
+        model.rows.extend(operators::rows(day, &judged, &asking));
+        Ok(Self { judged, asking, group_of, model, quantum, by_hand: Vec::new() })
     }
 
     /// The combination behind a choice; `None`: as filed.

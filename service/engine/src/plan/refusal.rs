@@ -1,5 +1,6 @@
 //! Why an option is not in a plan, and what would make room for it.
 
+use super::by_hand::keeps_out;
 use super::options::Grant;
 use super::problem::Problem;
 use super::state::PlanState;
@@ -33,6 +34,16 @@ impl Chosen<'_> {
     /// Everything that keeps an alternative out when it alone is added, or put in the place of the
     /// one taken.
     pub(super) fn why_not(&self, grant: Grant) -> Vec<Reason> {
+        let alternatives = &self.traffic.day.proposals[grant.proposal].alternatives;
+        let option = alternatives[grant.alternative as usize].option;
+        if keeps_out(&self.traffic.day, &self.problem.by_hand, (grant.proposal, option)) {
+            return vec![Reason { option, constraint: Constraint::ByHand }];
+        }
+        self.obstacles(grant)
+    }
+
+    /// The same, whatever was decided by hand.
+    pub(super) fn obstacles(&self, grant: Grant) -> Vec<Reason> {
         let alternatives = &self.traffic.day.proposals[grant.proposal].alternatives;
         let option = alternatives[grant.alternative as usize].option;
         let constraints = match self.own_reason(grant) {
@@ -93,6 +104,7 @@ impl Chosen<'_> {
             let key = "max_moved_flights";
             found.push(Constraint::PlanLimit { key, count: moved + 1.0, limit });
         }
+        found.extend(self.over_share(grant));
         if found.is_empty()
             && let (_, Some(taken)) = self.granted(grant.proposal)
         {
@@ -101,6 +113,22 @@ impl Chosen<'_> {
             found.push(Constraint::BetterOption { taken });
         }
         found
+    }
+
+    /// The operator's share of all grants, where this one would take it over the policy's limit.
+    fn over_share(&self, grant: Grant) -> Option<Constraint> {
+        let day = &self.traffic.day;
+        let limit = day.policy.max_share_per_operator?;
+        let operator_of = |id: ProposalId| day.flights[day.proposals[id].flight].operator.as_ref();
+        let operator = operator_of(grant.proposal)?;
+        let groups = 0..self.choices.len() as u32;
+        let granted: Vec<ProposalId> =
+            groups.flat_map(|group| self.grants(group)).map(|g| g.proposal).collect();
+        let is_new = usize::from(!granted.contains(&grant.proposal));
+        let own = granted.iter().filter(|&&id| operator_of(id) == Some(operator)).count();
+        let share = (own + is_new) as f64 / (granted.len() + is_new) as f64;
+        let key = "max_share_per_operator";
+        (share > limit + 1e-9).then_some(Constraint::PlanLimit { key, count: share, limit })
     }
 
     /// Grants that would have to go so that this one could be added: blockers are taken away one

@@ -8,11 +8,11 @@ use crate::fixture::{empty_parts, flight};
 use crate::traffic::Traffic;
 
 /// Eastbound along a parallel at 450 kt or so, FL 350, starting at a time.
-fn eastbound(name: &str, start_s: f64, lat_deg: f64) -> FlightParts {
+pub(super) fn eastbound(name: &str, start_s: f64, lat_deg: f64) -> FlightParts {
     flight(name, &[(start_s, 0.0, lat_deg, 350.0), (start_s + 7200.0, 15.0, lat_deg, 350.0)])
 }
 
-fn option(number: u32, fl: f64, from_s: f64, until_s: f64, km: f64) -> AlternativeParts {
+pub(super) fn option(number: u32, fl: f64, from_s: f64, until_s: f64, km: f64) -> AlternativeParts {
     AlternativeParts {
         option: number,
         stretches: vec![StretchParts {
@@ -28,12 +28,16 @@ fn option(number: u32, fl: f64, from_s: f64, until_s: f64, km: f64) -> Alternati
     }
 }
 
-fn proposal(name: &str, flight: &str, alternatives: Vec<AlternativeParts>) -> ProposalParts {
+pub(super) fn proposal(
+    name: &str,
+    flight: &str,
+    alternatives: Vec<AlternativeParts>,
+) -> ProposalParts {
     ProposalParts { proposal: name.to_owned(), flight: flight.to_owned(), alternatives }
 }
 
 /// A sector over everything between two levels, with one capacity row for the whole day.
-fn sector(
+pub(super) fn sector(
     name: &str,
     floor_fl: f64,
     ceiling_fl: f64,
@@ -52,13 +56,13 @@ fn sector(
     (sector, capacity)
 }
 
-fn find_on(parts: DayParts, options: &FindOptions) -> (Traffic, Plans) {
+pub(super) fn find_on(parts: DayParts, options: &FindOptions) -> (Traffic, Plans) {
     let traffic = Traffic::new(Day::build(parts).expect("a sound day").day);
     let plans = find(&traffic, options, Watch::unattended()).expect("a plan");
     (traffic, plans)
 }
 
-fn verdicts(plan: &Plan) -> Vec<Verdict> {
+pub(super) fn verdicts(plan: &Plan) -> Vec<Verdict> {
     plan.decisions.iter().map(|d| d.verdict).collect()
 }
 

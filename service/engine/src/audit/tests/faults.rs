@@ -26,7 +26,7 @@ fn decisions_that_do_not_fit_the_day() {
     assert_eq!(found, [Finding::WrongFlight { proposal: P, claimed, flight }]);
     let found = after(|p| {
         p.decisions[0].verdict = Verdict::Amended;
-        p.decisions[0].reasons = vec![ClaimedReason { option: None, kind: ReasonKind::ByHand }];
+        p.decisions[0].reasons = vec![ClaimedReason { option: None, kind: ReasonKind::Separation }];
     });
     let (verdict, option) = (Verdict::Amended, Some(1));
     assert_eq!(found, [Finding::VerdictMismatch { proposal: P, verdict, option }]);

@@ -157,7 +157,14 @@ pub(super) fn plan(day: &Day, taken: &[(u32, u32)]) -> PlanUnderAudit {
         written.push(points(flight, &one.path));
     }
     let objective = decisions.iter().map(|d| d.net_benefit).sum();
-    PlanUnderAudit { objective, bound: None, gap: None, decisions, written: Some(written) }
+    PlanUnderAudit {
+        objective,
+        bound: None,
+        gap: None,
+        decisions,
+        written: Some(written),
+        by_hand: None,
+    }
 }
 
 fn claim_grants(day: &Day, grants: &[Grant<'_>], decisions: &mut [ClaimedDecision]) {
