@@ -68,7 +68,7 @@ impl Answers<'_> {
 
 /// A time of the day, `06:15:30`.
 fn clock_time(time_s: f64) -> String {
-    let seconds = time_s.floor() as i64;
-    let (hours, minutes) = (seconds.div_euclid(3600), seconds.rem_euclid(3600) / 60);
-    format!("{hours:02}:{minutes:02}:{:02}", seconds.rem_euclid(60))
+    let part = |size_s: f64, of: f64| (time_s / size_s).floor().rem_euclid(of);
+    let hours = (time_s / 3600.0).floor();
+    format!("{hours:02.0}:{:02.0}:{:02.0}", part(60.0, 60.0), part(1.0, 60.0))
 }
