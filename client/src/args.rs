@@ -1,6 +1,6 @@
 //! What can be asked on the command line.
 
-use crate::commands::{ask, audit, check, completions, demo, plan, policy, serve};
+use crate::commands::{ask, audit, check, completions, demo, export, plan, policy, serve};
 use crate::report::cautions;
 use crate::tables::time::parse_utc;
 use clap::{Parser, Subcommand, ValueEnum};
@@ -40,6 +40,8 @@ pub(crate) enum Command {
     Ask(ask::AskArgs),
     /// Find the best set of proposals that can be granted together.
     Plan(plan::PlanArgs),
+    /// Write the search's model of a day as free MPS, for other solvers.
+    Export(export::ExportArgs),
     /// Judge a plan by code that shares none of the search's shortcuts.
     Audit(audit::AuditArgs),
     /// Show every key of the policy with its unit, value, default and source.

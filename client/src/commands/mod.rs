@@ -5,6 +5,7 @@ pub(crate) mod audit;
 pub(crate) mod check;
 pub(crate) mod completions;
 pub(crate) mod demo;
+pub(crate) mod export;
 pub(crate) mod plan;
 pub(crate) mod policy;
 pub(crate) mod serve;
@@ -36,6 +37,7 @@ pub(crate) fn run(args: Args, screen: &Screen) -> Result<Answered, Failure> {
                 Command::Check(args) => check::run(&args, &session).await,
                 Command::Ask(args) => ask::run(&args, &session).await,
                 Command::Plan(args) => plan::run(&args, &session).await,
+                Command::Export(args) => export::run(&args, &session).await,
                 Command::Audit(args) => audit::run(&args, &session).await,
                 Command::Policy(args) => policy::run(&args, &session).await,
                 Command::Completions(_) | Command::Serve(_) => Ok(Answered::Plainly),

@@ -29,8 +29,8 @@ fn a_plan_is_written_holds_in_the_audit_and_can_be_asked_beside() {
          P2        CCC3    1       FL 340  03-04 06:10:00  03-04 06:49:38       100.0      20.0    -21.6
 
         Refused
-         proposal  flight  why not                                                             what would make room
-         P1        AAA1    a loss of separation with BBB2 at 03-04 06:11:00: 0.60 NM, 1000 ft
+         proposal  flight  why not                                                            what would make room
+         P1        AAA1    a loss of separation with BBB2 at 03-04 06:11:00: 0.60 NM, 999 ft
 
         Written to PLAN
 
@@ -149,4 +149,47 @@ fn killed_while_it_writes_it_leaves_a_whole_plan() {
         assert_eq!(bytes_in(&plan), kept, "round {round}");
     }
     assert_eq!(run(&["audit", folder, out]).code, Some(0));
+}
+
+#[test]
+fn a_model_is_exported_with_names_that_people_read() {
+    let day = day_with("");
+    let within = tempfile::tempdir().expect("a folder");
+    let file = within.path().join("model.mps");
+    let exported = run(&["export", arg(day.path()), "--out", arg(&file)]);
+    assert_eq!(exported.code, Some(0), "{}", exported.err);
+    let text = fs::read_to_string(&file).expect("a file");
+    // One loss of separation, with a flight that cannot move, fixes the first proposal.
+    expect![[r#"
+        * net benefits are counted in units of 1e0
+        NAME Nowhere-2031
+        OBJSENSE
+         MAX
+        ROWS
+         N net-benefit
+         E one-AAA1-0
+         E one-CCC3-1
+        COLUMNS
+         MARK MARKER INTORG
+         AAA1=filed net-benefit 0
+         AAA1=filed one-AAA1-0 1
+         AAA1=P1.1 net-benefit 37708945921353
+         AAA1=P1.1 one-AAA1-0 1
+         CCC3=filed net-benefit 0
+         CCC3=filed one-CCC3-1 1
+         CCC3=P2.1 net-benefit 37708945921353
+         CCC3=P2.1 one-CCC3-1 1
+         MARK MARKER INTEND
+        RHS
+         RHS one-AAA1-0 1
+         RHS one-CCC3-1 1
+        BOUNDS
+         BV BND AAA1=filed
+         FX BND AAA1=P1.1 0
+         BV BND CCC3=filed
+         BV BND CCC3=P2.1
+        ENDATA
+    "#]]
+    .assert_eq(&text);
+    assert_eq!(bytes_in(within.path()).len(), 1, "nothing else is left");
 }

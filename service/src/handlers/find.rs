@@ -187,7 +187,12 @@ fn run(
         news.send_replace(Some(progress));
     };
     let watch = Watch { stop: &|| sign.reason(), progress: &progress };
-    find(&ready.traffic, options, watch).map_err(|error| match error {
+    find(&ready.traffic, options, watch).map_err(|error| failure(ready, error))
+}
+
+/// What it means that there is no plan.
+pub(super) fn failure(ready: &Ready, error: PlanError) -> ServiceError {
+    match error {
         PlanError::TooManyCombinations(error) => {
             let flight = ready.answers().flight(error.flight);
             ServiceError::Precondition {
@@ -225,7 +230,7 @@ fn run(
             tracing::error!(?defect, "the search failed");
             ServiceError::Internal
         }
-    })
+    }
 }
 
 fn progress_to_wire(progress: Progress) -> v1::SearchProgress {

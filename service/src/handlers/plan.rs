@@ -12,6 +12,7 @@ use tokio_stream::wrappers::ReceiverStream;
 use tonic::{Request, Response, Status, Streaming};
 use tracing::Instrument;
 
+use super::export::pieces;
 use super::find::LOADING_KEYS;
 use super::{Api, paging};
 use crate::compute::Work;
@@ -32,6 +33,7 @@ const QUEUE: usize = 4;
 #[tonic::async_trait]
 impl PlanService for Api {
     type AskChangesStream = ReceiverStream<Result<v1::AskChangesResponse, Status>>;
+    type ExportModelStream = ReceiverStream<Result<v1::ExportModelResponse, Status>>;
     type FindPlansStream = ReceiverStream<Result<v1::FindPlansResponse, Status>>;
 
     async fn ask_change(
@@ -79,6 +81,25 @@ impl PlanService for Api {
             }
         };
         tokio::spawn(searching.instrument(tracing::info_span!("find_plans")));
+        Ok(Response::new(ReceiverStream::new(receiver)))
+    }
+
+    #[tracing::instrument(skip_all)]
+    async fn export_model(
+        &self,
+        request: Request<v1::ExportModelRequest>,
+    ) -> Result<Response<Self::ExportModelStream>, Status> {
+        let deadline = deadline::of_call(request.metadata());
+        let text = self.exported(request.into_inner(), deadline).await?;
+        let (sender, receiver) = mpsc::channel(QUEUE);
+        tokio::spawn(async move {
+            for piece in pieces(&text) {
+                let message = v1::ExportModelResponse { text: piece.to_owned() };
+                if sender.send(Ok(message)).await.is_err() {
+                    break;
+                }
+            }
+        });
         Ok(Response::new(ReceiverStream::new(receiver)))
     }
 

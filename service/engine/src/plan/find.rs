@@ -132,22 +132,7 @@ pub fn find(
     options: &FindOptions,
     watch: Watch<'_>,
 ) -> Result<Plans, PlanError> {
-    if let Some(key) = unheeded(&traffic.day.policy) {
-        return Err(PlanError::Unheeded { key });
-    }
-    let mut problem = Problem::new(traffic, watch)?;
-    let mut decisions = traffic.day.decisions.clone();
-    decisions.extend(&options.decisions);
-    decisions.sort_unstable();
-    decisions.dedup();
-    let unmet = by_hand::fix(traffic, &mut problem, &decisions, options.unmet)?;
-    let problem = problem;
-    tracing::debug!(
-        groups = problem.model.groups.len(),
-        rows = problem.model.rows.len(),
-        clashes = problem.model.clashes.len(),
-        "model made"
-    );
+    let (problem, unmet) = problem_of(traffic, options, watch)?;
     watch.wanted()?;
     let amount = |count| problem.quantum.amount(count);
     let progress = |p: search::Progress| {
@@ -200,6 +185,30 @@ pub fn find(
         Some(search::Stopped::Work | search::Stopped::Infeasible) | None => Stopped::Work,
     };
     Ok(Plans { plans, bound, stopped, unmet })
+}
+
+/// The problem that is searched, and the decisions by hand that it leaves out.
+pub(super) fn problem_of(
+    traffic: &Traffic,
+    options: &FindOptions,
+    watch: Watch<'_>,
+) -> Result<(Problem, Vec<HandDecision>), PlanError> {
+    if let Some(key) = unheeded(&traffic.day.policy) {
+        return Err(PlanError::Unheeded { key });
+    }
+    let mut problem = Problem::new(traffic, watch)?;
+    let mut decisions = traffic.day.decisions.clone();
+    decisions.extend(&options.decisions);
+    decisions.sort_unstable();
+    decisions.dedup();
+    let unmet = by_hand::fix(traffic, &mut problem, &decisions, options.unmet)?;
+    tracing::debug!(
+        groups = problem.model.groups.len(),
+        rows = problem.model.rows.len(),
+        clashes = problem.model.clashes.len(),
+        "model made"
+    );
+    Ok((problem, unmet))
 }
 
 /// A key of the policy that would change plans but is not heeded yet.

@@ -7,6 +7,7 @@
 
 mod by_hand;
 mod decide;
+mod export;
 mod find;
 mod operators;
 mod options;
@@ -21,6 +22,7 @@ mod tests_rules;
 
 pub use by_hand::Unmet;
 pub(crate) use decide::planned_stretches;
+pub use export::export_mps;
 pub use find::{FindOptions, PlanError, Progress, Watch, find};
 pub use options::TooManyCombinations;
 pub(crate) use options::sort_by_start;

@@ -13,12 +13,12 @@ const PARTS: f64 = 1e6;
 /// Products of shares and counts may be off by rounding.
 const ROUNDING: f64 = 1e-9;
 
-/// The rows of the policy's two keys about operators.
+/// The rows of the policy's two keys about operators, each with its key.
 pub(super) fn rows(
     day: &Day,
     judged: &IdVec<ProposalId, Vec<Judged>>,
     asking: &[Asking],
-) -> Vec<Row> {
+) -> Vec<(&'static str, Row)> {
     let mut rows = Vec::new();
     let operators = by_operator(day, asking);
     if let Some(most) = day.policy.max_share_per_operator {
@@ -32,7 +32,8 @@ pub(super) fn rows(
                     (choice(group, candidate), grants * (own - share))
                 })
             });
-            rows.push(Row { slack: 0, terms: terms.filter(|term| term.1 != 0).collect() });
+            let terms = terms.filter(|term| term.1 != 0).collect();
+            rows.push(("max_share_per_operator", Row { slack: 0, terms }));
         }
     }
     if let Some(least) = day.policy.min_grant_rate_per_operator {
@@ -47,7 +48,8 @@ pub(super) fn rows(
                     (choice(group, candidate), -(combination.grants.len() as i32))
                 })
             });
-            rows.push(Row { slack: -wanted, terms: terms.collect() });
+            let row = Row { slack: -wanted, terms: terms.collect() };
+            rows.push(("min_grant_rate_per_operator", row));
         }
     }
     rows

@@ -30,9 +30,20 @@ pub(super) struct Problem {
     pub(super) asking: Vec<Asking>,
     pub(super) group_of: BTreeMap<FlightId, u32>,
     pub(super) model: Model,
+    /// What each of the model's rows limits.
+    pub(super) limits: Vec<Limit>,
     pub(super) quantum: Quantum,
     /// The decisions by hand that are in force.
     pub(super) by_hand: Vec<HandDecision>,
+}
+
+/// What a row of the model limits.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Limit {
+    /// The count of a window or minute.
+    Cell(Cell),
+    /// What a key of the policy says.
+    Policy(&'static str),
 }
 
 impl Problem {
@@ -49,10 +60,12 @@ impl Problem {
         let differences = all_differences(traffic, &asking);
         tracing::debug!("changes counted");
         watch.wanted()?;
+        let (mut limits, rows): (Vec<Limit>, Vec<Row>) =
+            rows(traffic, &differences).into_iter().unzip();
         let mut model = Model {
             groups: asking.iter().map(|a| group(a, &judged, quantum)).collect(),
             clashes: Vec::new(),
-            rows: rows(traffic, &differences),
+            rows,
             any_ofs: any_ofs(traffic, &differences),
         };
         watch.wanted()?;
@@ -64,9 +77,13 @@ impl Problem {
             };
             let terms = (0u32..).zip(&model.groups).flat_map(moved).collect();
             model.rows.push(Row { slack: most.min(1e9) as i64, terms });
+            limits.push(Limit::Policy("max_moved_flights"));
         }
-        model.rows.extend(operators::rows(day, &judged, &asking));
-        Ok(Self { judged, asking, group_of, model, quantum, by_hand: Vec::new() })
+        for (key, row) in operators::rows(day, &judged, &asking) {
+            model.rows.push(row);
+            limits.push(Limit::Policy(key));
+        }
+        Ok(Self { judged, asking, group_of, model, limits, quantum, by_hand: Vec::new() })
     }
 
     /// The combination behind a choice; `None`: as filed.
@@ -146,14 +163,16 @@ fn by_cell(differences: &[(Choice, Vec<Difference>)]) -> Vec<(Cell, Choice, i32)
 }
 
 /// One row for every limited cell that some candidate adds to.
-fn rows(traffic: &Traffic, differences: &[(Choice, Vec<Difference>)]) -> Vec<Row> {
+fn rows(traffic: &Traffic, differences: &[(Choice, Vec<Difference>)]) -> Vec<(Limit, Row)> {
     let terms = by_cell(differences);
     terms
         .chunk_by(|a, b| a.0 == b.0)
         .filter(|terms| terms.iter().any(|t| t.2 > 0))
         .filter_map(|terms| {
-            let slack = traffic.loads.slack(terms[0].0)?;
-            Some(Row { slack, terms: terms.iter().map(|&(_, c, delta)| (c, delta)).collect() })
+            let cell = terms[0].0;
+            let slack = traffic.loads.slack(cell)?;
+            let terms = terms.iter().map(|&(_, c, delta)| (c, delta)).collect();
+            Some((Limit::Cell(cell), Row { slack, terms }))
         })
         .collect()
 }
