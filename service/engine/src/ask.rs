@@ -6,7 +6,6 @@ use crate::change::{Change, change_levels};
 use crate::day::Alternative;
 use crate::ids::FlightId;
 use crate::plan::{PlanState, planned_stretches, sort_by_start};
-use crate::separation::expected_new_losses;
 use crate::traffic::Traffic;
 
 /// One option of one flight.
@@ -81,7 +80,7 @@ fn judge(
         contrail_km_avoided: figures.contrail_km_avoided,
         extra_fuel_kg: figures.extra_fuel_kg,
         arrival_shift_s: arrival_shift_s(state, question.flight, change),
-        expected_new_losses: expected_new_losses(&traffic.scene, &[version]),
+        expected_new_losses: state.expected_new_losses(traffic, &version),
         least_slack: state.loads().least_slack(&differences),
         stretches: planned_stretches(
             traffic,

@@ -204,10 +204,6 @@ pub(super) fn failure(ready: &Ready, error: PlanError) -> ServiceError {
                 ),
             }
         }
-        PlanError::Unheeded { key } => ServiceError::Precondition {
-            subject: format!("policy key `{key}`"),
-            problem: "plans do not heed it yet; leave it at its default".to_owned(),
-        },
         PlanError::UnmetDecision { decision, breaks } => ServiceError::Precondition {
             subject: ready.answers().hand_decision(&decision),
             problem: format!(

@@ -15,7 +15,7 @@ use super::tolerances::{Lean, RELATIVE, TIME_S};
 use super::world::{Delays, Grant, World, combine};
 use super::worth::{Net, fuel_source, fuel_tolerance_kg, net};
 use crate::answer::Verdict;
-use crate::day::Proposal;
+use crate::day::{Proposal, SeparationRule};
 use crate::ids::{FlightId, Id, ProposalId};
 
 /// Tries everything left out; gives findings and how many options were tried.
@@ -207,6 +207,8 @@ fn is_false(
     let policy = &world.day.policy;
     match kind {
         ReasonKind::Invalid => alone(world, flight, grant, Lean::AgainstPlan).is_ok(),
+        // Losses to be expected cost something, too.
+        ReasonKind::NotWorthIt if policy.separation == SeparationRule::Priced => false,
         ReasonKind::NotWorthIt => {
             let Some(own) = total(world, flight, &[grant]) else { return false };
             own.net.value > own.within + own.net.size * RELATIVE && !has_others(world, flight, id)

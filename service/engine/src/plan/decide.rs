@@ -45,7 +45,7 @@ pub(super) fn plan_of(
             points: written_points(&traffic.flight(flight).profile, &moved.change),
         })
         .collect();
-    let versions: Vec<_> = state.moved().map(|(id, _)| state.version(traffic, id)).collect();
+    let versions = state.versions(traffic);
     Plan {
         objective: problem.quantum.amount(problem.model.objective(choices)),
         expected_new_losses: expected_new_losses(&traffic.scene, &versions),

@@ -6,7 +6,7 @@ use super::options::TooManyCombinations;
 use super::problem::Problem;
 use crate::answer::{Plans, Reason, Stopped};
 use crate::audit::{AuditReport, PlanUnderAudit, audit};
-use crate::day::{HandDecision, Policy, SeparationRule};
+use crate::day::HandDecision;
 use crate::search::{self, Index, RankOptions, SolveOptions, State, choice, rank};
 use crate::traffic::Traffic;
 
@@ -94,12 +94,6 @@ pub enum PlanError {
     /// The options of a flight combine in too many ways.
     #[error(transparent)]
     TooManyCombinations(#[from] TooManyCombinations),
-    /// The policy asks for what plans do not heed yet: better no plan than one that ignores it.
-    #[error("plans do not heed the policy key `{key}` yet")]
-    Unheeded {
-        /// The key.
-        key: &'static str,
-    },
     /// The audit found fault with a plan: a defect of this program. The plan is not handed out.
     #[error("the audit found {} faults with a plan", .0.findings.len())]
     FailedAudit(Box<AuditReport>),
@@ -125,8 +119,8 @@ pub enum PlanError {
 /// Finds the best plans of a day, best first.
 ///
 /// # Errors
-/// A flight's options combine in too many ways; the policy asks for what is not offered yet; or a
-/// defect of this program is found out.
+/// A flight's options combine in too many ways; decisions by hand or what operators are owed can't
+/// be met; or a defect of this program is found out.
 pub fn find(
     traffic: &Traffic,
     options: &FindOptions,
@@ -193,9 +187,6 @@ pub(super) fn problem_of(
     options: &FindOptions,
     watch: Watch<'_>,
 ) -> Result<(Problem, Vec<HandDecision>), PlanError> {
-    if let Some(key) = unheeded(&traffic.day.policy) {
-        return Err(PlanError::Unheeded { key });
-    }
     let mut problem = Problem::new(traffic, watch)?;
     let mut decisions = traffic.day.decisions.clone();
     decisions.extend(&options.decisions);
@@ -209,11 +200,6 @@ pub(super) fn problem_of(
         "model made"
     );
     Ok((problem, unmet))
-}
-
-/// A key of the policy that would change plans but is not heeded yet.
-fn unheeded(policy: &Policy) -> Option<&'static str> {
-    (policy.separation != SeparationRule::Nominal).then_some("separation")
 }
 
 /// Takes away grants that gain nothing, where the plan stays feasible without them: an option whose

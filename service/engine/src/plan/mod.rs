@@ -5,6 +5,7 @@
 //! `refusal` says what blocks an option, and which grants would have to go for it. `state` is the
 //! day as a plan makes it, against which single questions are answered too.
 
+mod apart;
 mod by_hand;
 mod decide;
 mod export;
@@ -17,6 +18,8 @@ mod refusal;
 mod state;
 #[cfg(test)]
 mod tests;
+#[cfg(test)]
+mod tests_apart;
 #[cfg(test)]
 mod tests_rules;
 

@@ -1,8 +1,8 @@
 //! From a day to the model that the search is given.
 //!
 //! A *group* is a flight that asks for something, its *candidates* the combinations of its open
-//! options (candidate 0: as filed). Two candidates *clash* where their flights would have a new
-//! loss; one that has it with a flight that cannot move is ruled out. Every limited window or
+//! options (candidate 0: as filed). Two candidates *clash* where separation forbids both; one that
+//! it forbids beside a flight that cannot move is ruled out. Every limited window or
 //! minute to which some candidate adds is a *row*, every minute at which an overload could come to
 //! last an *any-of*.
 
@@ -10,6 +10,7 @@ use std::collections::BTreeMap;
 
 use rayon::prelude::*;
 
+use super::apart::Apart;
 use super::find::{PlanError, Watch};
 use super::operators;
 use super::options::{Asking, Combination, Grant, Judged, combine_all, judge_all};
@@ -19,8 +20,7 @@ use crate::day::HandDecision;
 use crate::ids::{FlightId, IdVec, ProposalId};
 use crate::load::{Cell, Difference, Which};
 use crate::search::{AnyOf, Choice, Clash, Cost, Group, Model, Row, choice};
-use crate::separation::{Version, VersionRef, clashes};
-use crate::traffic::{Traffic, VersionMinima};
+use crate::traffic::Traffic;
 
 /// A day's proposals as a search problem.
 #[derive(Debug)]
@@ -54,7 +54,11 @@ impl Problem {
         let asking = combine_all(day, &traffic.tracks, &judged, &forbidden)?;
         let group_of: BTreeMap<FlightId, u32> =
             (0u32..).zip(&asking).map(|(group, asking)| (asking.flight, group)).collect();
-        let quantum = Quantum::for_total(&day.policy, total_worth(&judged, &asking));
+        let apart = Apart::new(traffic, &asking, &|flight| group_of.get(&flight).copied());
+        tracing::debug!(clashes = apart.clashes.len(), "changes held apart");
+        watch.wanted()?;
+        let total = total_worth(&judged, &asking) + apart.total_cost();
+        let quantum = Quantum::for_total(&day.policy, total);
         tracing::debug!(flights = asking.len(), "changes made");
         watch.wanted()?;
         let differences = all_differences(traffic, &asking);
@@ -70,7 +74,7 @@ impl Problem {
         };
         watch.wanted()?;
         tracing::debug!("rows made");
-        add_clashes(traffic, &asking, &group_of, &mut model);
+        add_apart(apart, quantum, &mut model);
         if let Some(most) = day.policy.max_moved_flights {
             let moved = |(g, group): (u32, &Group)| {
                 (1..group.candidates.len() as u32).map(move |c| (choice(g, c), 1))
@@ -205,35 +209,19 @@ fn any_ofs(traffic: &Traffic, differences: &[(Choice, Vec<Difference>)]) -> Vec<
         .collect()
 }
 
-/// Adds a hard clash for every pair of candidates with a new loss, and forbids those that have one
-/// with a flight that cannot move.
-fn add_clashes(
-    traffic: &Traffic,
-    asking: &[Asking],
-    group_of: &BTreeMap<FlightId, u32>,
-    model: &mut Model,
-) {
-    let choices: Vec<(Choice, FlightId, &Combination)> = choices(asking).collect();
-    let minima: Vec<VersionMinima> = choices
-        .par_iter()
-        .map(|(_, flight, combination)| traffic.minima(*flight, &combination.change.changed))
-        .collect();
-    let versions: Vec<Version<'_>> = choices
-        .iter()
-        .zip(&minima)
-        .map(|((_, flight, c), minima)| traffic.version(*flight, &c.change.changed, minima))
-        .collect();
-    let choice_of = |version: VersionRef| match version {
-        VersionRef::Changed(index) => Some(choices[index].0),
-        VersionRef::Filed(flight) => group_of.get(&flight).map(|&group| choice(group, 0)),
-    };
-    for pair in clashes(&traffic.scene, &versions) {
-        match (choice_of(pair.a), choice_of(pair.b)) {
-            (Some(a), Some(b)) => model.clashes.push(Clash { a, b, cost: Cost::Hard }),
-            (Some(only), None) | (None, Some(only)) => {
-                model.groups[only.group as usize].forbid(only.candidate);
-            }
-            (None, None) => {}
-        }
+/// Adds what separation asks to the model.
+fn add_apart(apart: Apart, quantum: Quantum, model: &mut Model) {
+    let hard = apart.clashes.into_iter().map(|(a, b)| Clash { a, b, cost: Cost::Hard });
+    let soft = apart.pair_costs.into_iter().filter_map(|(a, b, cost)| {
+        let cost = quantum.count(cost);
+        (cost > 0).then_some(Clash { a, b, cost: Cost::Soft(cost) })
+    });
+    model.clashes = hard.chain(soft).collect();
+    for only in apart.ruled_out {
+        model.groups[only.group as usize].forbid(only.candidate);
+    }
+    for (of, cost) in apart.costs {
+        let candidates = &mut model.groups[of.group as usize].candidates;
+        candidates[of.candidate as usize].value -= quantum.count(cost);
     }
 }

@@ -5,6 +5,7 @@ use super::options::Grant;
 use super::problem::Problem;
 use super::state::PlanState;
 use crate::answer::{Constraint, Exchange, Reason};
+use crate::day::SeparationRule;
 use crate::ids::ProposalId;
 use crate::search::{Blocker, Choice, State, choice};
 use crate::traffic::Traffic;
@@ -111,6 +112,10 @@ impl Chosen<'_> {
             let alternatives = &self.traffic.day.proposals[grant.proposal].alternatives;
             let taken = alternatives[taken.alternative as usize].option;
             found.push(Constraint::BetterOption { taken });
+        }
+        if found.is_empty() && self.traffic.day.policy.separation == SeparationRule::Priced {
+            // Nothing forbids it: the losses to be expected cost more than it brings.
+            found.push(Constraint::NotWorthIt);
         }
         found
     }

@@ -4,17 +4,17 @@
 use std::collections::BTreeMap;
 use std::sync::Arc;
 
+use super::apart::{forbids_new_losses, shift_rule};
 use crate::answer::{Constraint, Loss};
 use crate::change::Change;
 use crate::ids::FlightId;
 use crate::load::{Difference, FlightLoad, PlannedLoads, Which};
-use crate::path::{Changed, Path};
-use crate::separation::{Version, new_losses, new_losses_against_filed};
+use crate::path::Changed;
+use crate::separation::{
+    MovedIndex, PairRisk, ShiftRule, Version, breaks_shift_rule, new_losses_in_plan,
+    pair_risks_in_plan,
+};
 use crate::traffic::{Traffic, VersionMinima};
-
-/// What is added to the widest minimum before a pair is passed over, metres: far more than any
-/// tolerance of the exact test.
-const NEAR_M: f64 = 1000.0;
 
 /// A moved flight.
 #[derive(Debug, Clone)]
@@ -25,45 +25,6 @@ pub struct Moved {
     pub minima: VersionMinima,
     /// What it is now counted for.
     pub load: FlightLoad,
-    span: Span,
-}
-
-/// When and where a path is at most: a cheap test of whether two flights can meet.
-#[derive(Debug, Clone, Copy)]
-struct Span {
-    from_s: f64,
-    until_s: f64,
-    low_m: [f64; 3],
-    high_m: [f64; 3],
-}
-
-impl Span {
-    fn of(path: &Path<'_>) -> Self {
-        let mut span = Self {
-            from_s: path.start_s(),
-            until_s: path.end_s(),
-            low_m: [f64::INFINITY; 3],
-            high_m: [f64::NEG_INFINITY; 3],
-        };
-        // Between two knots a path is a straight chord, hence in the box of its knots.
-        for knot in path.knots_from(0) {
-            for k in 0..3 {
-                span.low_m[k] = span.low_m[k].min(knot.position_m[k]);
-                span.high_m[k] = span.high_m[k].max(knot.position_m[k]);
-            }
-        }
-        span
-    }
-
-    /// Whether two paths may be within a distance of each other at one time.
-    fn meets(&self, other: &Self, within_m: f64) -> bool {
-        self.from_s <= other.until_s
-            && other.from_s <= self.until_s
-            && (0..3).all(|k| {
-                self.low_m[k] - within_m <= other.high_m[k]
-                    && other.low_m[k] - within_m <= self.high_m[k]
-            })
-    }
 }
 
 /// The planned day.
@@ -71,13 +32,19 @@ impl Span {
 pub struct PlanState {
     moved: BTreeMap<FlightId, Moved>,
     loads: PlannedLoads,
+    /// Where the moved flights are, in the order of flights.
+    index: MovedIndex,
 }
 
 impl PlanState {
     /// The filed day: nothing is moved.
     #[must_use]
     pub fn filed(traffic: &Traffic) -> Self {
-        Self { moved: BTreeMap::new(), loads: PlannedLoads::new(Arc::clone(&traffic.loads)) }
+        Self {
+            moved: BTreeMap::new(),
+            loads: PlannedLoads::new(Arc::clone(&traffic.loads)),
+            index: MovedIndex::default(),
+        }
     }
 
     /// The day with these flights moved.
@@ -89,9 +56,9 @@ impl PlanState {
             let filed = &traffic.filed[flight];
             state.loads.apply(&traffic.loads.differences(&traffic.day, filed, &load, Which::All));
             let minima = traffic.minima(flight, &change.changed);
-            let span = Span::of(&traffic.path(flight, Some(&change.changed)));
-            state.moved.insert(flight, Moved { change, minima, load, span });
+            state.moved.insert(flight, Moved { change, minima, load });
         }
+        state.index = MovedIndex::new(&traffic.scene, &state.versions(traffic));
         state
     }
 
@@ -119,6 +86,15 @@ impl PlanState {
             Some(moved) => traffic.version(flight, &moved.change.changed, &moved.minima),
             None => traffic.scene.filed(flight),
         }
+    }
+
+    /// The moved flights as separation sees them, in the order of flights.
+    #[must_use]
+    pub fn versions<'a>(&'a self, traffic: &'a Traffic) -> Vec<Version<'a>> {
+        let version = |(id, moved): (FlightId, &'a Moved)| {
+            traffic.version(id, &moved.change.changed, &moved.minima)
+        };
+        self.moved().map(version).collect()
     }
 
     /// By how much the planned counts would change if a flight flew `changed` instead of what it
@@ -153,33 +129,62 @@ impl PlanState {
             count: o.count,
             limit: o.limit,
         });
-        let losses = self.new_losses(traffic, flight, changed).into_iter();
-        over.chain(losses.map(|loss| Constraint::Separation {
-            other: if loss.first == flight { loss.second } else { loss.first },
-            time_s: loss.closest_s,
-            horizontal_m: loss.horizontal_m,
-            vertical_ft: loss.vertical_ft,
-        }))
-        .collect()
-    }
-
-    /// New losses between a flight that flies `changed` and all other flights as they are now, by
-    /// time of the closest moment.
-    #[must_use]
-    pub fn new_losses(&self, traffic: &Traffic, flight: FlightId, changed: &Changed) -> Vec<Loss> {
         let minima = traffic.minima(flight, changed);
         let version = traffic.version(flight, changed, &minima);
-        let scene = &traffic.scene;
-        let other_of = |l: &Loss| if l.first == flight { l.second } else { l.first };
-        let mut found: Vec<Loss> = new_losses_against_filed(scene, &version);
-        found.retain(|loss| !self.moved.contains_key(&other_of(loss)));
-        let span = Span::of(&version.path);
-        let within_m = traffic.widest_minimum_m() + NEAR_M;
-        let near = |moved: &Moved| span.meets(&moved.span, within_m);
-        for (other, moved) in self.moved().filter(|(other, m)| *other != flight && near(m)) {
-            let other = traffic.version(other, &moved.change.changed, &moved.minima);
-            found.extend(new_losses(scene, &version, &other));
+        over.chain(self.too_close(traffic, &version)).collect()
+    }
+
+    /// What separation has against a version of a flight beside all others as they are now, in the
+    /// policy's own way.
+    fn too_close(&self, traffic: &Traffic, version: &Version<'_>) -> Vec<Constraint> {
+        let policy = &traffic.day.policy;
+        let moved = self.versions(traffic);
+        let mut found = Vec::new();
+        if forbids_new_losses(policy) {
+            found.extend(self.new_losses(traffic, version, &moved).into_iter().map(|loss| {
+                Constraint::Separation {
+                    other: if loss.first == version.flight { loss.second } else { loss.first },
+                    time_s: loss.closest_s,
+                    horizontal_m: loss.horizontal_m,
+                    vertical_ft: loss.vertical_ft,
+                }
+            }));
         }
+        if let Some(rule) = shift_rule(policy) {
+            let risks = pair_risks_in_plan(&traffic.scene, version, &moved, &self.index);
+            found.extend(risks.iter().filter_map(|risk| {
+                let other = if risk.first == version.flight { risk.second } else { risk.first };
+                let limit = match rule {
+                    ShiftRule::Risk { max_probability } => max_probability.max(risk.filed),
+                    ShiftRule::Buffered { .. } => risk.filed,
+                };
+                let beside = self.version(traffic, other);
+                breaks_shift_rule(&traffic.scene, rule, version, &beside).then_some(
+                    Constraint::SeparationRisk { other, probability: risk.planned, limit },
+                )
+            }));
+        }
+        found
+    }
+
+    /// Losses to be expected more, under the policy's time errors, if a flight flew this version
+    /// beside all others as they are now, than as filed.
+    #[must_use]
+    pub fn expected_new_losses(&self, traffic: &Traffic, version: &Version<'_>) -> f64 {
+        let moved = self.versions(traffic);
+        let risks = pair_risks_in_plan(&traffic.scene, version, &moved, &self.index);
+        risks.iter().map(PairRisk::added).sum()
+    }
+
+    /// New losses between a version of a flight and all other flights as they are now, by time of
+    /// the closest moment.
+    fn new_losses(
+        &self,
+        traffic: &Traffic,
+        version: &Version<'_>,
+        moved: &[Version<'_>],
+    ) -> Vec<Loss> {
+        let mut found = new_losses_in_plan(&traffic.scene, version, moved, &self.index);
         found.sort_by(|a, b| {
             a.closest_s.total_cmp(&b.closest_s).then((a.first, a.second).cmp(&(b.first, b.second)))
         });

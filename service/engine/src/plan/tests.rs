@@ -252,11 +252,3 @@ fn the_number_of_moved_flights_can_be_limited() {
         Constraint::PlanLimit { key: "max_moved_flights", .. }
     ));
 }
-
-#[test]
-fn a_policy_that_plans_do_not_heed_yet_gets_no_plan() {
-    let policy = Policy { separation: crate::day::SeparationRule::Risk, ..Policy::default() };
-    let traffic = Traffic::new(Day::build(DayParts { policy, ..empty_parts() }).unwrap().day);
-    let found = find(&traffic, &FindOptions::default(), Watch::unattended());
-    assert_eq!(found, Err(PlanError::Unheeded { key: "separation" }));
-}

@@ -40,7 +40,7 @@ pub use risk::{
     pair_risks_in_plan,
 };
 pub use scene::{Scene, Survivors, Version, filed_losses, pair_losses, survivors};
-pub use shift_clashes::{ShiftRule, shift_clashes};
+pub use shift_clashes::{ShiftRule, breaks_shift_rule, shift_clashes};
 pub use shift_set::{ShiftSet, shift_set};
 pub use versions::{
     VersionPair, VersionRef, clashes, losses_against_filed, new_losses_against_filed,

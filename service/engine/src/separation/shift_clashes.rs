@@ -65,6 +65,18 @@ impl ShiftRule {
     }
 }
 
+/// Whether two versions of two flights break a rule for uncertain times.
+#[must_use]
+pub fn breaks_shift_rule(
+    scene: &Scene,
+    rule: ShiftRule,
+    one: &Version<'_>,
+    other: &Version<'_>,
+) -> bool {
+    let set = shift_set(scene, one, other, rule.within_s(scene.policy.time_sigma_s));
+    rule.broken(scene, [one, other], &set)
+}
+
 /// The size of shift that is exceeded, on either side, with a probability, seconds; shifts have √2
 /// times the deviation of each flight's time.
 fn tail_s(probability: f64, time_sigma_s: f64) -> f64 {
