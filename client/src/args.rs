@@ -1,6 +1,8 @@
 //! What can be asked on the command line.
 
-use crate::commands::{ask, audit, check, completions, demo, export, plan, policy, serve};
+use crate::commands::{
+    ask, audit, check, compare, completions, demo, export, new, plan, policy, serve,
+};
 use crate::report::cautions;
 use crate::tables::time::parse_utc;
 use clap::{Parser, Subcommand, ValueEnum};
@@ -34,6 +36,8 @@ pub(crate) struct Global {
 pub(crate) enum Command {
     /// Check and plan an invented day that comes with the program.
     Demo(demo::DemoArgs),
+    /// Write a commented day folder to begin from.
+    New(new::NewArgs),
     /// Find the overloads and losses of separation that a day holds as filed.
     Check(check::CheckArgs),
     /// Ask whether one level change can be granted, and if not, what blocks it.
@@ -44,6 +48,8 @@ pub(crate) enum Command {
     Export(export::ExportArgs),
     /// Judge a plan by code that shares none of the search's shortcuts.
     Audit(audit::AuditArgs),
+    /// Tell what differs between two plans of a day.
+    Compare(compare::CompareArgs),
     /// Show every key of the policy with its unit, value, default and source.
     Policy(policy::PolicyArgs),
     /// Serve the gRPC API on a port.

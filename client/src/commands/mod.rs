@@ -3,9 +3,11 @@
 pub(crate) mod ask;
 pub(crate) mod audit;
 pub(crate) mod check;
+pub(crate) mod compare;
 pub(crate) mod completions;
 pub(crate) mod demo;
 pub(crate) mod export;
+pub(crate) mod new;
 pub(crate) mod plan;
 pub(crate) mod policy;
 pub(crate) mod serve;
@@ -25,6 +27,7 @@ use tracing_subscriber::EnvFilter;
 pub(crate) fn run(args: Args, screen: &Screen) -> Result<Answered, Failure> {
     match args.command {
         Command::Completions(args) => completions::run(&args, screen),
+        Command::New(args) => new::run(&args, screen),
         Command::Serve(args) => block_on(async {
             log("info");
             serve::run(&args, screen).await
@@ -37,10 +40,13 @@ pub(crate) fn run(args: Args, screen: &Screen) -> Result<Answered, Failure> {
                 Command::Check(args) => check::run(&args, &session).await,
                 Command::Ask(args) => ask::run(&args, &session).await,
                 Command::Plan(args) => plan::run(&args, &session).await,
+                Command::Compare(args) => compare::run(&args, &session).await,
                 Command::Export(args) => export::run(&args, &session).await,
                 Command::Audit(args) => audit::run(&args, &session).await,
                 Command::Policy(args) => policy::run(&args, &session).await,
-                Command::Completions(_) | Command::Serve(_) => Ok(Answered::Plainly),
+                Command::Completions(_) | Command::New(_) | Command::Serve(_) => {
+                    Ok(Answered::Plainly)
+                }
             }
         }),
     }

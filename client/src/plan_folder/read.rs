@@ -26,6 +26,13 @@ const PLAN_ID: &str = "read-back";
 #[derive(Debug)]
 pub(crate) struct ReadPlan(pub(super) FoundPlan);
 
+impl ReadPlan {
+    /// The plan and its rows.
+    pub(crate) fn into_found(self) -> FoundPlan {
+        self.0
+    }
+}
+
 /// Reads the best plan of a folder, made for the day of that hash.
 ///
 /// # Errors

@@ -7,6 +7,7 @@ pub(crate) mod ask;
 pub(crate) mod audit;
 pub(crate) mod cautions;
 pub(crate) mod check;
+pub(crate) mod compare;
 pub(crate) mod figures;
 pub(crate) mod names;
 pub(crate) mod plan;

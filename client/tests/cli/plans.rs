@@ -193,3 +193,44 @@ fn a_model_is_exported_with_names_that_people_read() {
     .assert_eq(&text);
     assert_eq!(bytes_in(within.path()).len(), 1, "nothing else is left");
 }
+
+#[test]
+fn two_plans_are_compared() {
+    let day = day_with("");
+    let within = tempfile::tempdir().expect("a folder");
+    let (one, other) = (within.path().join("one"), within.path().join("other"));
+    let folder = arg(day.path());
+    for plan in [&one, &other] {
+        assert_eq!(run(&["plan", folder, "--out", arg(plan)]).code, Some(0));
+    }
+    let alike = run(&["compare", folder, arg(&one), arg(&other)]);
+    assert_eq!(alike.code, Some(0), "{}", alike.err);
+    assert!(alike.out.contains("the two plans decide alike"), "{}", alike.out);
+    let document = other.join("plan.json");
+    let text = fs::read_to_string(&document).expect("text");
+    let granted = "\"verdict\": \"granted\",\n          \"option\": 1";
+    assert!(text.contains(granted), "{text}");
+    let refused = "\"verdict\": \"refused\",\n          \"option\": null";
+    fs::write(&document, text.replace(granted, refused)).expect("written");
+    let differ = run(&["compare", folder, arg(&one), arg(&other), "--json"]);
+    assert_eq!(differ.code, Some(0), "{}", differ.err);
+    let value: serde_json::Value = serde_json::from_str(&differ.out).expect("JSON");
+    assert_eq!(value["differences"][0]["proposal"], "P2");
+    assert_eq!(value["differences"][0]["second"]["verdict"], "refused");
+    assert_eq!(value["second"]["granted_or_amended"], 0);
+}
+
+#[test]
+fn a_new_day_folder_passes_the_check_and_can_be_planned() {
+    let within = tempfile::tempdir().expect("a folder");
+    let folder = within.path().join("day");
+    let made = run(&["new", arg(&folder)]);
+    assert_eq!(made.code, Some(0), "{}", made.err);
+    let checked = run(&["check", arg(&folder)]);
+    assert_eq!((checked.code, checked.err.as_str()), (Some(0), ""), "{}", checked.out);
+    let plan = within.path().join("plan");
+    let planned = run(&["plan", arg(&folder), "--out", arg(&plan)]);
+    assert!(planned.out.contains("1 of 1 proposal granted"), "{}", planned.out);
+    let again = run(&["new", arg(&folder)]);
+    assert_eq!(again.code, Some(2), "{}", again.out);
+}
