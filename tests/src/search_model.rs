@@ -1,5 +1,9 @@
 //! Instances of the plan search kept as JSON: the format of `tests/data/search-models`.
 
+use std::fs::File;
+use std::io::{self, BufReader, Read};
+use std::path::Path;
+
 use rimeshift_engine::search::{Choice, Clash, Cost, Group, Model, Row, choice};
 use serde::Deserialize;
 
@@ -29,6 +33,45 @@ pub struct InstanceRow {
     pub slack: i64,
     /// (option, delta).
     pub coef: Vec<(u32, i32)>,
+}
+
+/// Reads an instance, gzipped if the name ends in `.gz`.
+///
+/// # Errors
+/// The file can't be read, or does not hold an instance.
+pub fn read(file: &Path) -> io::Result<Instance> {
+    let mut reader = BufReader::new(File::open(file)?);
+    let mut text = Vec::new();
+    if file.extension().is_some_and(|extension| extension == "gz") {
+        flate2::read::GzDecoder::new(reader).read_to_end(&mut text)?;
+    } else {
+        reader.read_to_end(&mut text)?;
+    }
+    let instance: Instance = serde_json::from_slice(&text)?;
+    match instance.fault() {
+        Some(fault) => Err(io::Error::new(io::ErrorKind::InvalidData, fault)),
+        None => Ok(instance),
+    }
+}
+
+impl Instance {
+    /// The first option or flight named that does not exist.
+    fn fault(&self) -> Option<String> {
+        let is_option = |&option: &u32| (option as usize) < self.weight.len();
+        let is_flight = |&flight: &u32| (flight as usize) < self.flights.len();
+        let ends = self.edges.iter().flat_map(|(a, b)| [a, b]);
+        let mut options = (self.flights.iter().flatten())
+            .chain(ends)
+            .chain(self.edges_filed.iter().map(|(option, _)| option))
+            .chain(self.rows.iter().flat_map(|row| row.coef.iter().map(|(option, _)| option)));
+        if let Some(option) = options.find(|option| !is_option(option)) {
+            return Some(format!("there is no option {option}"));
+        }
+        let mut flights = self.edges_filed.iter().map(|(_, flight)| flight);
+        flights
+            .find(|flight| !is_flight(flight))
+            .map(|flight| format!("there is no flight {flight}"))
+    }
 }
 
 /// The instance as the search takes it. Options that no flight has are left out.

@@ -1,20 +1,21 @@
 //! `solve-model FILE…` solves instances of the plan search kept as JSON (plain or gzipped) and prints
-//! for each its objective, bound, gap, seconds and work as one line of JSON. The format is described
-//! in `tests/data/search-models/README.md`.
+//! for each what was found, proven and presolved, and when, as one line of JSON. The format is
+//! described in `tests/data/search-models/README.md`.
 
-use std::fs::File;
-use std::io::{BufReader, Read, Write};
+use std::io::Write;
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
+use std::sync::Mutex;
 use std::time::Instant;
 
 use clap::Parser;
-use rimeshift_engine::search::{SolveOptions, Watch, solve};
-use rimeshift_tests::search_model::{Instance, model_of};
+use rimeshift_engine::search::{Progress, Solution, SolveOptions, Watch, solve};
+use rimeshift_tests::search_model::{model_of, read};
+use serde_json::json;
 
 type Failure = Box<dyn std::error::Error + Send + Sync>;
 
-/// Solve instances of the plan search and print objective, bound, gap and seconds as JSON.
+/// Solve instances of the plan search and print objective, bound, gap, seconds and phases as JSON.
 #[derive(Debug, Parser)]
 #[command(name = "solve-model")]
 struct Args {
@@ -60,51 +61,70 @@ fn main() -> ExitCode {
     }
 }
 
+/// What was known at some second.
+type News = (f64, Progress);
+
 fn run(file: &Path, args: &Args) -> Result<(), Failure> {
     let instance = read(file).map_err(|error| format!("{}: {error}", file.display()))?;
     let model = model_of(&instance);
     let mut options = SolveOptions { seed: args.seed, gap: args.gap, ..SolveOptions::default() };
     options.work = args.work.unwrap_or(options.work);
-    let mut shortest_s = f64::INFINITY;
-    let mut solution = None;
+    let mut shortest: Option<(f64, Solution, Vec<News>)> = None;
     for _ in 0..args.repeat.max(1) {
         let start = Instant::now();
         let stop = || args.seconds.is_some_and(|seconds| start.elapsed().as_secs_f64() > seconds);
+        let told = Mutex::new(Vec::new());
         let progress = |progress| {
-            if args.verbose {
-                let elapsed_s = start.elapsed().as_secs_f64();
-                let _ = writeln!(std::io::stderr(), "{elapsed_s:9.4} s {progress:?}");
+            if let Ok(mut told) = told.lock() {
+                told.push((start.elapsed().as_secs_f64(), progress));
             }
         };
         let watch = Watch { stop: &stop, progress: &progress };
         let found = solve(&model, &options, watch)
             .map_err(|defect| format!("{}: {defect}", file.display()))?;
-        shortest_s = shortest_s.min(start.elapsed().as_secs_f64());
-        solution = Some(found);
+        let seconds = start.elapsed().as_secs_f64();
+        if shortest.as_ref().is_none_or(|shortest| seconds < shortest.0) {
+            shortest = Some((seconds, found, told.into_inner().unwrap_or_default()));
+        }
     }
-    let Some(solution) = solution else { return Ok(()) };
-    let line = serde_json::json!({
+    let Some((seconds, solution, told)) = shortest else { return Ok(()) };
+    if args.verbose {
+        for (at_s, news) in &told {
+            writeln!(std::io::stderr(), "{at_s:9.4} s {news:?}")?;
+        }
+    }
+    let within = |gap: f64| {
+        let near = |news: &&News| {
+            (solution.objective - news.1.objective) as f64 <= gap * solution.objective as f64
+        };
+        told.iter().find(near).map(|news| news.0)
+    };
+    let presolved = solution.presolved;
+    let line = json!({
         "instance": instance.name,
         "objective": solution.objective,
         "bound": solution.bound,
         "gap": solution.gap(),
-        "seconds": shortest_s,
-        "stopped": format!("{:?}", solution.stopped),
+        "seconds": seconds,
+        "phases": {
+            "first_plan_s": told.first().map(|news| news.0),
+            "within_0.5_percent_s": within(0.005),
+            "best_plan_s": within(0.0),
+        },
+        "stopped": format!("{:?}", solution.stopped).to_lowercase(),
         "work": solution.work,
         "feasible": model.violations(&solution.choices).is_empty(),
-        "presolved": format!("{:?}", solution.presolved),
+        "presolve": {
+            "groups": presolved.groups,
+            "groups_settled": presolved.groups_settled,
+            "candidates": presolved.candidates,
+            "candidates_ruled_out": presolved.candidates_ruled_out,
+            "rows": presolved.rows,
+            "rows_dropped": presolved.rows_dropped,
+        },
+        "parts": presolved.components,
+        "largest_part": presolved.largest_component,
     });
     writeln!(std::io::stdout(), "{line}")?;
     Ok(())
-}
-
-fn read(file: &Path) -> Result<Instance, Failure> {
-    let mut reader = BufReader::new(File::open(file)?);
-    let mut text = Vec::new();
-    if file.extension().is_some_and(|extension| extension == "gz") {
-        flate2::read::GzDecoder::new(reader).read_to_end(&mut text)?;
-    } else {
-        reader.read_to_end(&mut text)?;
-    }
-    Ok(serde_json::from_slice(&text)?)
 }

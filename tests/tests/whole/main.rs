@@ -2,5 +2,6 @@
 
 #![expect(clippy::expect_used, reason = "a test fails by panicking")]
 
+mod search;
 mod standards;
 mod tidy;

@@ -2,6 +2,9 @@
 //! fast a machine is. One unit is about one touched term. Time enters only through the stop flag.
 
 use std::fmt;
+use std::sync::atomic::{AtomicU64, Ordering};
+
+use super::progress::{Ledger, Place};
 
 /// How a search is going.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -10,7 +13,11 @@ pub struct Progress {
     pub objective: i64,
     /// Upper bound proven so far.
     pub bound: i64,
-    /// Work done so far.
+    /// Parts that what presolving left falls into, with no constraint between them.
+    pub components: usize,
+    /// How many of those are solved to proven optimality.
+    pub components_closed: usize,
+    /// Work done so far, about.
     pub work: u64,
 }
 
@@ -19,7 +26,8 @@ pub struct Progress {
 pub struct Watch<'a> {
     /// Asked every few thousand units of work; once it says true the search returns what it has.
     pub stop: &'a (dyn Fn() -> bool + Sync),
-    /// Told whenever the search knows more.
+    /// Told whenever the search knows more, once something feasible is known. When and how often
+    /// depends on the number of threads, unlike the answer.
     pub progress: &'a (dyn Fn(Progress) + Sync),
 }
 
@@ -48,31 +56,67 @@ pub(super) struct Budget<'a> {
     used: u64,
     next_look: u64,
     told_to_stop: bool,
+    meter: &'a AtomicU64,
+    place: Option<Place<'a>>,
 }
 
 impl<'a> Budget<'a> {
-    pub(super) fn new(limit: u64, watch: Watch<'a>) -> Self {
+    /// `meter` counts the work of all shares as it is done.
+    pub(super) fn new(limit: u64, watch: Watch<'a>, meter: &'a AtomicU64) -> Self {
         let told_to_stop = (watch.stop)();
-        Self { watch, limit, used: 0, next_look: LOOK_EVERY, told_to_stop }
+        Self { watch, limit, used: 0, next_look: LOOK_EVERY, told_to_stop, meter, place: None }
     }
 
-    /// A budget of its own that listens to the same caller.
-    pub(super) fn share(&self, limit: u64) -> Self {
-        let mut share = Self::new(limit, self.watch);
+    /// A budget of its own for a part, which listens to the same caller.
+    pub(super) fn share<'b>(&self, limit: u64, place: Place<'b>) -> Budget<'b>
+    where
+        'a: 'b,
+    {
+        let mut share = Budget::new(limit, self.watch, self.meter);
         share.told_to_stop |= self.told_to_stop;
+        share.place = Some(place);
         share
     }
 
+    /// A budget of its own for a piece of the same work.
+    pub(super) fn portion(&self, limit: u64) -> Self {
+        let mut portion = Self::new(limit, self.watch, self.meter);
+        portion.told_to_stop |= self.told_to_stop;
+        portion.place = self.place;
+        portion
+    }
+
+    /// A ledger for the parts of what this budget is spent on.
+    pub(super) fn ledger(
+        &self,
+        settled: i64,
+        parts: Vec<(Option<i64>, i64)>,
+        best: (Option<i64>, i64),
+    ) -> Ledger<'_> {
+        match self.place {
+            Some(place) => Ledger::of_part(place, settled, parts, best),
+            None => Ledger::of_whole(self.watch, self.meter, settled, parts),
+        }
+    }
+
+    /// Tells what is known of the part that this budget is spent on.
+    pub(super) fn tell(&self, objective: Option<i64>, bound: i64) {
+        if let Some(place) = self.place {
+            place.tell(objective, bound);
+        }
+    }
+
     /// Adds the work that a share did.
-    pub(super) fn absorb(&mut self, share: &Self) {
-        self.used = self.used.saturating_add(share.used);
-        self.told_to_stop |= share.told_to_stop;
+    pub(super) fn absorb(&mut self, used: u64, told_to_stop: bool) {
+        self.used = self.used.saturating_add(used);
+        self.told_to_stop |= told_to_stop;
     }
 
     /// Counts work; false once the search should end.
     pub(super) fn spend(&mut self, units: usize) -> bool {
         self.used = self.used.saturating_add(units as u64);
         if self.used >= self.next_look {
+            self.meter.fetch_add(self.used + LOOK_EVERY - self.next_look, Ordering::Relaxed);
             self.next_look = self.used + LOOK_EVERY;
             self.told_to_stop |= (self.watch.stop)();
         }
@@ -93,9 +137,5 @@ impl<'a> Budget<'a> {
 
     pub(super) fn left(&self) -> u64 {
         self.limit.saturating_sub(self.used)
-    }
-
-    pub(super) fn report(&self, objective: i64, bound: i64) {
-        (self.watch.progress)(Progress { objective, bound, work: self.used });
     }
 }

@@ -40,8 +40,10 @@ impl Known {
         self.objective.map_or(i64::MIN + 1, |objective| objective + 1)
     }
 
-    pub(super) fn is_closed(&self, gap: i64) -> bool {
-        self.objective.map_or(self.bound == i64::MIN, |objective| self.bound - objective <= gap)
+    /// Whether the gap, relative to the bound, is at most this.
+    pub(super) fn is_good_enough(&self, gap: f64) -> bool {
+        let most = (gap * self.bound.unsigned_abs() as f64) as i64;
+        self.objective.map_or(self.bound == i64::MIN, |objective| self.bound - objective <= most)
     }
 
     /// Takes over choices if they are better.
@@ -156,7 +158,7 @@ impl<'i> Tree<'i> {
     }
 
     /// Searches the tree below the root until the gap is reached or the budget is out.
-    pub(super) fn search(&mut self, left: Vec<bool>, gap: i64, budget: &mut Budget<'_>) {
+    pub(super) fn search(&mut self, left: Vec<bool>, gap: f64, budget: &mut Budget<'_>) {
         let basis = Rc::new(self.simplex.basis());
         let bound = self.known.bound;
         let mut current = Some(Node { bound, depth: 0, serial: 0, left, basis });
@@ -165,7 +167,8 @@ impl<'i> Tree<'i> {
             let best = self.known.objective.unwrap_or(i64::MIN);
             let highest = self.open.peek().map_or(i64::MIN, |open| open.bound).max(node.bound);
             self.known.bound = self.known.bound.min(highest).max(best);
-            if self.known.is_closed(gap) {
+            budget.tell(self.known.objective, self.known.bound);
+            if self.known.is_good_enough(gap) {
                 return;
             }
             if node.bound <= best {

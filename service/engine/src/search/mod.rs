@@ -27,6 +27,7 @@ mod oracle;
 mod part;
 mod presolve;
 mod prices;
+mod progress;
 mod ranking;
 mod relaxation;
 mod simplex;

@@ -10,7 +10,8 @@ use super::improve;
 use super::index::Index;
 use super::presolve::Live;
 use super::prices::{Proof, descend};
-use super::relaxation::Relaxation;
+use super::progress::Place;
+use super::relaxation::{Hints, Relaxation};
 use super::split::{Part, Split, split};
 use super::state::State;
 
@@ -25,71 +26,95 @@ pub(super) struct Aim {
 #[derive(Debug, Clone)]
 pub(super) struct Answer {
     pub(super) known: Known,
-    /// Prices of the part's rows.
-    pub(super) row_prices: Vec<f64>,
+    /// The prices behind the bound.
+    pub(super) hints: Hints,
 }
 
 /// Groups from which prices are sought before the linear relaxation is solved.
 const LARGE: u32 = 40;
-/// Subgradient steps on a large part.
-const DESCENT: usize = 120;
+/// A core holds this share of the candidates that could be added to one a group.
+const CORE: usize = 8;
 
-/// Solves a part, starting from the given choices (variables) if there are any.
+/// Solves a part of which something is known.
 pub(super) fn solve_part(
     index: &Index,
-    start: Option<&[u32]>,
+    mut known: Known,
+    hints: &Hints,
     aim: Aim,
     budget: &mut Budget<'_>,
 ) -> Answer {
-    let mut known = first_plan(index, start, budget);
-    let gap = |known: &Known| (aim.gap * (known.bound.unsigned_abs() as f64)) as i64;
-    let mut row_prices = vec![0.0; index.slack.len()];
-    if known.is_closed(gap(&known)) || (budget.is_out() && known.objective.is_some()) {
-        return Answer { known, row_prices };
+    if known.is_good_enough(aim.gap) || (budget.is_out() && known.objective.is_some()) {
+        return Answer { known, hints: hints.clone() };
     }
-    let relaxation = Relaxation::new(index);
+    let relaxation = Relaxation::new(index, hints);
     budget.spend(4 * relaxation.columns.items_len());
+    let answer = |known, prices: &[f64]| Answer {
+        known,
+        hints: relaxation.hints(prices, index.slack.len()),
+    };
     let mut left = vec![true; index.value.len()];
     if index.groups() >= LARGE {
-        let target = known.objective.unwrap_or(0) as f64;
-        let prices =
-            descend(index, &relaxation, vec![0.0; relaxation.right.len()], target, DESCENT, budget);
+        let prices = descend(index, &relaxation, known.objective, budget);
         let proof = Proof::new(index, &relaxation, &prices, &left);
         known.bound = known.bound.min(proof.bound);
-        spread_prices(&relaxation, &prices, &mut row_prices);
-        if known.is_closed(gap(&known)) {
-            return Answer { known, row_prices };
+        budget.tell(known.objective, known.bound);
+        let so_far = answer(known, &prices);
+        known = solve_core(index, &proof, so_far.known, &so_far.hints, aim, budget);
+        if known.is_good_enough(aim.gap) {
+            return answer(known, &prices);
         }
         rule_out(index, &proof, &known, &mut left);
         if is_much_smaller(index, &left) {
-            known = again(index, &left, known, aim, budget);
-            return Answer { known, row_prices };
+            known = again(index, &left, known, &so_far.hints, aim, budget);
+            return answer(known, &prices);
         }
     }
     let mut tree = Tree::new(index, &relaxation, known);
-    if tree.root(&mut left, budget) {
-        spread_prices(&relaxation, &tree.root_prices, &mut row_prices);
-    }
+    let solved = tree.root(&mut left, budget);
+    let prices = tree.root_prices.clone();
     let known = tree.known().clone();
-    if known.is_closed(gap(&known)) || budget.is_out() {
-        return Answer { known, row_prices };
+    budget.tell(known.objective, known.bound);
+    if known.is_good_enough(aim.gap) || budget.is_out() {
+        return answer(known, &prices);
     }
-    if is_much_smaller(index, &left) {
-        let known = again(index, &left, known, aim, budget);
-        return Answer { known, row_prices };
+    if solved && is_much_smaller(index, &left) {
+        let hints = relaxation.hints(&prices, index.slack.len());
+        let known = again(index, &left, known, &hints, aim, budget);
+        return answer(known, &prices);
     }
-    tree.search(left, gap(&known), budget);
-    Answer { known: tree.known().clone(), row_prices }
+    tree.search(left, aim.gap, budget);
+    answer(tree.known().clone(), &prices)
 }
 
+/// Solves what is left when, beside the choices known, only the candidates may be chosen that cost
+/// the bound least: a small part of the whole that holds very good choices (the core of Balas and
+/// Zemel 1980, Operations Research 28). At most a quarter of the budget goes there.
+fn solve_core(
+    index: &Index,
+    proof: &Proof,
+    mut known: Known,
+    hints: &Hints,
+    aim: Aim,
+    budget: &mut Budget<'_>,
+) -> Known {
+    let spare = index.value.len() - index.groups() as usize;
+    let core = proof.core(index, &known.chosen, spare / CORE);
+    if !is_much_smaller(index, &core) || known.objective.is_none() {
+        return known;
+    }
+    let mut share = budget.portion(budget.left() / 4);
+    let inner = again(index, &core, known.clone(), hints, aim, &mut share);
+    let (used, told_to_stop) = (share.used(), share.told_to_stop());
+    budget.absorb(used, told_to_stop);
+    known.objective = inner.objective;
+    known.chosen = inner.chosen;
+    known
+}
+
+/// What is known of a part before it is solved, from the given choices (variables) if there are any.
 fn first_plan(index: &Index, start: Option<&[u32]>, budget: &mut Budget<'_>) -> Known {
     let rest: Vec<u32> = (0..index.groups()).map(|group| index.vars(group).start).collect();
-    let greatest = |group| index.vars(group).map(|var| index.value[var as usize]).max();
-    let mut known = Known {
-        chosen: rest.clone(),
-        objective: None,
-        bound: (0..index.groups()).filter_map(greatest).sum(),
-    };
+    let mut known = Known { chosen: rest.clone(), objective: None, bound: greatest_sum(index) };
     for chosen in start.map(<[u32]>::to_vec).into_iter().chain([rest]) {
         let mut state = State::of_vars(index, chosen);
         greedy::fill(&mut state, budget);
@@ -100,6 +125,12 @@ fn first_plan(index: &Index, start: Option<&[u32]>, budget: &mut Budget<'_>) -> 
         known.offer(&state);
     }
     known
+}
+
+/// The sum of every group's greatest value: the plainest bound.
+fn greatest_sum(index: &Index) -> i64 {
+    let greatest = |group| index.vars(group).map(|var| index.value[var as usize]).max();
+    (0..index.groups()).filter_map(greatest).sum()
 }
 
 /// Rules out what is worse than what is known; that itself stays in, as a start for what is left.
@@ -116,20 +147,13 @@ fn is_much_smaller(index: &Index, left: &[bool]) -> bool {
     4 * spare(open) < 3 * spare(left.len())
 }
 
-fn spread_prices(relaxation: &Relaxation, prices: &[f64], row_prices: &mut [f64]) {
-    for (source, &price) in relaxation.source.iter().zip(prices) {
-        if let Some(row) = source {
-            row_prices[*row as usize] = price;
-        }
-    }
-}
-
 /// Reasons about what is left of a part, splits it again, and solves its pieces. What was ruled out
 /// holds nothing better than what is known, so the bound is the greater of the two.
 fn again(
     index: &Index,
     left: &[bool],
     mut known: Known,
+    hints: &Hints,
     aim: Aim,
     budget: &mut Budget<'_>,
 ) -> Known {
@@ -146,7 +170,8 @@ fn again(
     }
     let cut = split(index, &live);
     let start: Vec<u32> = known.chosen.iter().map(|&var| live.stand_in(var)).collect();
-    let (chosen, bound, _) = solve_split(index, &cut, &start, aim, budget);
+    let best = (known.objective, known.bound);
+    let (chosen, bound, _) = solve_split(index, &cut, &start, best, hints, aim, budget);
     let mut state = State::of_vars(index, chosen);
     if state.is_feasible() {
         improve::polish(&mut state, budget);
@@ -157,56 +182,94 @@ fn again(
 }
 
 /// Solves all parts, in parallel, each with its share of the budget; what some leave over goes to
-/// those that ran out. Returns the choices of the whole, its bound (the least there is if a part is
-/// infeasible), and the prices of its rows.
+/// those that ran out. `best` is what is known of the whole. Returns the choices of the whole, its
+/// bound (the least there is if a part is infeasible), and what came out of each part.
 pub(super) fn solve_split(
     index: &Index,
     cut: &Split,
     start: &[u32],
+    best: (Option<i64>, i64),
+    hints: &Hints,
     aim: Aim,
     budget: &mut Budget<'_>,
-) -> (Vec<u32>, i64, Vec<f64>) {
-    let mut answers: Vec<Option<Answer>> = vec![None; cut.parts.len()];
-    let unfinished = |answer: &Option<Answer>| {
-        answer.as_ref().is_none_or(|it| {
-            !it.known.is_closed((aim.gap * it.known.bound.unsigned_abs() as f64) as i64)
-        })
-    };
+) -> (Vec<u32>, i64, Vec<Answer>) {
+    let count = cut.parts.len();
+    let size = |part: usize| (cut.parts[part].vars.len() as f64).powi(2);
+    let unknown = cut.parts.iter().map(|part| (None, greatest_sum(&part.index))).collect();
+    let ledger = budget.ledger(cut.settled_value, unknown, best);
+    let place = |part| Place { whole: &ledger, part };
+    let mut purse = Purse::default();
+
+    let all: Vec<usize> = (0..count).collect();
+    let first = purse.share_out(budget, &all, size, place, |part, budget| {
+        let piece = &cut.parts[part];
+        let known = first_plan(&piece.index, inside(piece, index, start).as_deref(), budget);
+        Answer { known, hints: hints.inside(piece) }
+    });
+    let mut answers = first;
     for _ in 0..2 {
-        let todo: Vec<usize> =
-            (0..answers.len()).filter(|&part| unfinished(&answers[part])).collect();
-        if todo.is_empty() || (budget.is_out() && answers.iter().all(Option::is_some)) {
+        let open = |part: &usize| !answers[*part].known.is_good_enough(aim.gap);
+        let todo: Vec<usize> = all.iter().copied().filter(open).collect();
+        if todo.is_empty() || purse.is_out(budget) {
             break;
         }
-        let size = |part: usize| (cut.parts[part].vars.len() as f64).powi(2);
-        let total: f64 = todo.iter().map(|&part| size(part)).sum();
-        let limit = budget.left() as f64;
-        let shares: Vec<u64> =
-            todo.iter().map(|&part| (limit * size(part) / total) as u64).collect();
-        let parent = &*budget;
-        let solved: Vec<(Answer, Budget<'_>)> = todo
-            .par_iter()
-            .zip(&shares)
-            .map(|(&part, &share)| {
-                let mut budget = parent.share(share);
-                let piece = &cut.parts[part];
-                let start = match &answers[part] {
-                    Some(answer) => Some(answer.known.chosen.clone()),
-                    None => inside(piece, index, start),
-                };
-                let mut answer = solve_part(&piece.index, start.as_deref(), aim, &mut budget);
-                if let Some(before) = &answers[part] {
-                    answer.known.bound = answer.known.bound.min(before.known.bound);
-                }
-                (answer, budget)
-            })
-            .collect();
-        for (part, (answer, share)) in todo.into_iter().zip(solved) {
-            budget.absorb(&share);
-            answers[part] = Some(answer);
+        let solved = purse.share_out(budget, &todo, size, place, |part, budget| {
+            let Answer { known, hints } = &answers[part];
+            solve_part(&cut.parts[part].index, known.clone(), hints, aim, budget)
+        });
+        for (part, answer) in todo.into_iter().zip(solved) {
+            answers[part] = answer;
         }
     }
-    assemble(index, cut, &answers)
+    drop(ledger);
+    budget.absorb(purse.used, purse.told_to_stop);
+    let (chosen, bound) = assemble(index, cut, &answers);
+    (chosen, bound, answers)
+}
+
+/// What the shares of a budget have spent.
+#[derive(Default)]
+struct Purse {
+    used: u64,
+    told_to_stop: bool,
+}
+
+impl Purse {
+    fn is_out(&self, budget: &Budget<'_>) -> bool {
+        self.told_to_stop || self.used >= budget.left()
+    }
+
+    /// Does something for each of these parts, in parallel, each with a share of what is left that
+    /// is in proportion to its size. The shares don't depend on the number of threads.
+    fn share_out<'l>(
+        &mut self,
+        budget: &Budget<'_>,
+        parts: &[usize],
+        size: impl Fn(usize) -> f64,
+        place: impl Fn(usize) -> Place<'l> + Sync,
+        solve: impl Fn(usize, &mut Budget<'_>) -> Answer + Sync,
+    ) -> Vec<Answer> {
+        let left = budget.left().saturating_sub(self.used) as f64;
+        let total: f64 = parts.iter().map(|&part| size(part)).sum();
+        let share = |part: usize| (part, (left * size(part) / total) as u64);
+        let shares: Vec<(usize, u64)> = parts.iter().map(|&part| share(part)).collect();
+        let solved: Vec<(Answer, u64, bool)> = shares
+            .into_par_iter()
+            .map(|(part, share)| {
+                let mut budget = budget.share(share, place(part));
+                let answer = solve(part, &mut budget);
+                budget.tell(answer.known.objective, answer.known.bound);
+                (answer, budget.used(), budget.told_to_stop())
+            })
+            .collect();
+        let mut answers = Vec::with_capacity(solved.len());
+        for (answer, used, told_to_stop) in solved {
+            self.used = self.used.saturating_add(used);
+            self.told_to_stop |= told_to_stop;
+            answers.push(answer);
+        }
+        answers
+    }
 }
 
 /// The given choices as variables of a part, if all of them are left there.
@@ -219,20 +282,15 @@ fn inside(part: &Part, index: &Index, chosen: &[u32]) -> Option<Vec<u32>> {
     groups.collect()
 }
 
-fn assemble(index: &Index, cut: &Split, answers: &[Option<Answer>]) -> (Vec<u32>, i64, Vec<f64>) {
+fn assemble(index: &Index, cut: &Split, answers: &[Answer]) -> (Vec<u32>, i64) {
     let mut chosen: Vec<u32> = (0..index.groups()).map(|group| index.vars(group).start).collect();
     let mut choose = |var: u32| chosen[index.group_of[var as usize] as usize] = var;
     cut.settled.iter().for_each(|&var| choose(var));
     let mut bound = Some(cut.settled_value);
-    let mut prices = vec![0.0; index.slack.len()];
-    for (part, answer) in cut.parts.iter().zip(answers) {
-        let Some(Answer { known, row_prices }) = answer else { continue };
+    for (part, Answer { known, .. }) in cut.parts.iter().zip(answers) {
         known.chosen.iter().for_each(|&var| choose(part.vars[var as usize]));
         let feasible = known.bound > i64::MIN;
         bound = bound.filter(|_| feasible).map(|bound| bound.saturating_add(known.bound));
-        for (&row, &price) in part.rows.iter().zip(row_prices) {
-            prices[row as usize] = price;
-        }
     }
-    (chosen, bound.unwrap_or(i64::MIN), prices)
+    (chosen, bound.unwrap_or(i64::MIN))
 }

@@ -68,6 +68,27 @@ impl Proof {
         Self { bound, net, best, total }
     }
 
+    /// `chosen` and, of all others, the `spare` candidates that cost the bound least.
+    pub(super) fn core(&self, index: &Index, chosen: &[u32], spare: usize) -> Vec<bool> {
+        let mut core = vec![false; index.value.len()];
+        let mut open = Vec::new();
+        for group in 0..index.groups() {
+            for var in index.vars(group) {
+                let loss = self.best[group as usize] - self.net[var as usize];
+                if loss > 0 && chosen[group as usize] != var {
+                    open.push((loss, var));
+                } else {
+                    core[var as usize] = true;
+                }
+            }
+        }
+        open.sort_unstable();
+        for (_, var) in open.into_iter().take(spare) {
+            core[var as usize] = true;
+        }
+        core
+    }
+
     /// Whether the choice of `var` can't be part of anything worth `target` or more.
     pub(super) fn excludes(&self, index: &Index, var: u32, target: i64) -> bool {
         let Some(best) = self.best.get(index.group_of[var as usize] as usize) else { return true };
@@ -94,15 +115,33 @@ pub(super) fn proves_infeasible(
     Proof::of(index, relaxation, &prices, left, &nothing).total < 0
 }
 
-/// Improves prices by subgradient steps of Polyak's length towards a `target` near the optimum,
-/// along directions smoothed over steps (Polyak 1969; Camerini, Fratta and Maffioli 1975,
-/// Mathematical Programming Study 3). Returns the best prices met; never worse than the given ones.
+/// Improves prices: from none at all by a hundred long steps first, then by short ones. Returns the
+/// best prices met; never worse than the given ones.
 pub(super) fn descend(
+    index: &Index,
+    relaxation: &Relaxation,
+    known: Option<i64>,
+    budget: &mut Budget<'_>,
+) -> Vec<f64> {
+    let mut prices = relaxation.start.clone();
+    if prices.iter().all(|&price| price <= 0.0) {
+        prices = glide(index, relaxation, prices, known.unwrap_or(0) as f64, budget);
+    }
+    settle(index, relaxation, prices, known, budget)
+}
+
+/// Most long and short steps.
+const LONG_STEPS: usize = 120;
+const SHORT_STEPS: usize = 800;
+
+/// Subgradient steps of Polyak's length towards a `target` near the optimum, along directions
+/// smoothed over steps (Polyak 1969; Camerini, Fratta and Maffioli 1975, Mathematical Programming
+/// Study 3).
+fn glide(
     index: &Index,
     relaxation: &Relaxation,
     mut prices: Vec<f64>,
     target: f64,
-    steps: usize,
     budget: &mut Budget<'_>,
 ) -> Vec<f64> {
     let size = relaxation.columns.items_len() + index.value.len();
@@ -111,7 +150,7 @@ pub(super) fn descend(
     let mut direction = vec![0.0; prices.len()];
     let mut boldness = 1.0;
     let mut since_better = 0;
-    for _ in 0..steps {
+    for _ in 0..LONG_STEPS {
         let (bound, room) = evaluate(index, relaxation, &prices);
         if bound < least {
             if bound < least - 1e-6 * bound.abs() {
@@ -149,6 +188,80 @@ pub(super) fn descend(
         }
     }
     best
+}
+
+/// Improves prices by the volume algorithm (Barahona and Anbil 2000, Mathematical Programming 87):
+/// steps from the best prices so far, towards a `goal` below the bound, along a mean of the choices
+/// that earlier prices led to. Returns the best prices met; never worse than the given ones.
+fn settle(
+    index: &Index,
+    relaxation: &Relaxation,
+    start: Vec<f64>,
+    known: Option<i64>,
+    budget: &mut Budget<'_>,
+) -> Vec<f64> {
+    let size = relaxation.columns.items_len() + index.value.len();
+    let (mut least, mut mean) = evaluate(index, relaxation, &start);
+    let floor = known.map_or(least - 0.05 * least.abs(), |known| known as f64);
+    let mut goal = floor;
+    let mut best = start.clone();
+    let mut prices = start;
+    let (mut boldness, mut memory) = (0.03, 0.1);
+    let mut failures = 0;
+    let mut before = least;
+    for step in 1..=SHORT_STEPS {
+        let length = length(&mean, &best);
+        if least - floor < 1.0 || length < 1e-9 || !budget.spend(2 * size) {
+            break;
+        }
+        if least - goal < 0.0005 * least.abs() {
+            goal = floor.max(least - 0.001 * least.abs());
+        }
+        let stride = boldness * (least - goal).max(1.0) / length;
+        for (row, price) in prices.iter_mut().enumerate() {
+            let dearest = relaxation.cap[row].map_or(f64::MAX, |cap| cap as f64);
+            *price = (best[row] - stride * mean[row]).clamp(0.0, dearest);
+        }
+        let (bound, room) = evaluate(index, relaxation, &prices);
+        let agreement: f64 = room.iter().zip(&mean).map(|(a, b)| a * b).sum();
+        for (mean, room) in mean.iter_mut().zip(&room) {
+            *mean = memory * room + (1.0 - memory) * *mean;
+        }
+        if bound < least {
+            boldness *= if agreement > 0.0 { 1.5 } else { 1.1 };
+            boldness = boldness.min(2.0);
+            failures = 0;
+            least = bound;
+            best.copy_from_slice(&prices);
+        } else {
+            failures += 1;
+            if failures == PATIENCE {
+                boldness *= 0.67;
+                failures = 0;
+            }
+        }
+        if step % REVIEW == 0 {
+            if before - least < 1e-5 * least.abs() && before - least < 0.02 * (least - floor) {
+                break;
+            }
+            if before - least < 1e-4 * least.abs() {
+                memory = (0.5 * memory).max(1e-3);
+            }
+            before = least;
+        }
+    }
+    best
+}
+
+/// Steps without a better bound until they become shorter.
+const PATIENCE: usize = 10;
+/// Steps between two looks at whether they still help.
+const REVIEW: usize = 50;
+
+/// The squared length of a direction, without what prices of 0 can't follow.
+fn length(mean: &[f64], prices: &[f64]) -> f64 {
+    let free = mean.iter().zip(prices).filter(|&(&mean, &price)| mean <= 0.0 || price > 0.0);
+    free.map(|(mean, _)| mean * mean).sum()
 }
 
 /// The bound of these prices, and what each inequality has left of its right side when every group

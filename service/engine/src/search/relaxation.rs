@@ -6,6 +6,7 @@
 
 use super::index::{Index, Lists};
 use super::presolve::by_group;
+use super::split::Part;
 
 /// max Σ value, one candidate a group, Σ coefficient ≤ right side (more at a cost where soft).
 #[derive(Debug)]
@@ -19,6 +20,33 @@ pub(super) struct Relaxation {
     pub(super) columns: Lists<(u32, i64)>,
     /// The part's row that an inequality stands for, if it does.
     pub(super) source: Vec<Option<u32>>,
+    /// Prices to start from.
+    pub(super) start: Vec<f64>,
+}
+
+/// Prices found earlier: of rows, and of cliques of candidates.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub(super) struct Hints {
+    /// By row of the index; as good as all 0 if empty.
+    pub(super) rows: Vec<f64>,
+    pub(super) cliques: Vec<(Vec<u32>, f64)>,
+}
+
+impl Hints {
+    /// The same for a part of the index.
+    pub(super) fn inside(&self, part: &Part) -> Self {
+        let local = |var: &u32| part.vars.binary_search(var).ok().map(|var| var as u32);
+        let price = |&row: &u32| self.rows.get(row as usize).copied().unwrap_or(0.0);
+        let clique = |(clique, price): &(Vec<u32>, f64)| {
+            let clique: Vec<u32> = clique.iter().filter_map(local).collect();
+            (clique.len() > 1).then_some((clique, *price))
+        };
+        let mut rows: Vec<f64> = part.rows.iter().map(price).collect();
+        for (here, whole) in &part.twins {
+            rows[*here as usize] += price(whole);
+        }
+        Self { rows, cliques: self.cliques.iter().filter_map(clique).collect() }
+    }
 }
 
 /// Longest list of candidates that a clique is grown from.
@@ -26,22 +54,26 @@ const WIDEST: usize = 64;
 
 impl Relaxation {
     /// The relaxation of all firm rows and clashes; any-ofs are left out.
-    pub(super) fn new(index: &Index) -> Self {
+    pub(super) fn new(index: &Index, hints: &Hints) -> Self {
         let mut inequalities = Vec::new();
         let mut graph = Graph::new(index);
         let mut seeds = Vec::new();
         for row in 0..index.firm_rows {
+            let price = hints.rows.get(row as usize).copied().unwrap_or(0.0);
             match graph.add_row(index, row) {
-                Some(clique) => seeds.push((clique, Some(row))),
+                Some(clique) => seeds.push((clique, Some(row), price)),
                 None => inequalities.push(Inequality {
                     terms: index.row_terms[row].to_vec(),
                     right: index.slack[row as usize],
                     cap: None,
                     source: Some(row),
+                    price,
                 }),
             }
         }
         graph.seal();
+        let known = hints.cliques.iter().filter(|(clique, _)| graph.is_clique(clique));
+        seeds.extend(known.map(|(clique, price)| (clique.clone(), None, *price)));
         inequalities.extend(graph.cover(seeds));
         inequalities.extend(stars(index));
         Self::collect(index, &inequalities)
@@ -59,7 +91,24 @@ impl Relaxation {
             cap: inequalities.iter().map(|it| it.cap).collect(),
             columns: Lists::collect(index.value.len(), &by_var),
             source: inequalities.iter().map(|it| it.source).collect(),
+            start: inequalities.iter().map(|it| it.price).collect(),
         }
+    }
+
+    /// What these prices are worth knowing for later. `rows` is the number of rows of the index.
+    pub(super) fn hints(&self, prices: &[f64], rows: usize) -> Hints {
+        let mut hints = Hints { rows: vec![0.0; rows], cliques: Vec::new() };
+        for (inequality, &price) in (0u32..).zip(prices) {
+            match self.source[inequality as usize] {
+                Some(row) => hints.rows[row as usize] = price,
+                None if price > 0.0 && self.cap[inequality as usize].is_none() => {
+                    let clique = self.rows[inequality].iter().map(|&(var, _)| var).collect();
+                    hints.cliques.push((clique, price));
+                }
+                None => {}
+            }
+        }
+        hints
     }
 }
 
@@ -69,6 +118,7 @@ struct Inequality {
     right: i64,
     cap: Option<i64>,
     source: Option<u32>,
+    price: f64,
 }
 
 /// Candidates that exclude each other, as neighbours: by a clash, by a row, or as mates.
@@ -141,6 +191,11 @@ impl<'i> Graph<'i> {
                 || self.neighbours[a].binary_search(&b).is_ok())
     }
 
+    fn is_clique(&self, vars: &[u32]) -> bool {
+        let earlier = |last: usize| vars[..last].iter().all(|&a| self.excludes(a, vars[last]));
+        (1..vars.len()).all(earlier)
+    }
+
     /// Everything that excludes `var`.
     fn around(&self, var: u32) -> impl Iterator<Item = u32> + '_ {
         let mates =
@@ -172,20 +227,20 @@ impl<'i> Graph<'i> {
     }
 
     /// Cliques that cover the seeds and every pair.
-    fn cover(&self, seeds: Vec<(Vec<u32>, Option<u32>)>) -> Vec<Inequality> {
+    fn cover(&self, seeds: Vec<(Vec<u32>, Option<u32>, f64)>) -> Vec<Inequality> {
         let mut covered = vec![false; self.pairs.len()];
         let mut cliques = Vec::new();
-        for (mut clique, source) in seeds {
+        for (mut clique, source, price) in seeds {
             self.grow(&mut clique);
             self.mark(&clique, &mut covered);
-            cliques.push(at_most_one(&clique, source));
+            cliques.push(at_most_one(&clique, source, price));
         }
         for (position, &(a, b)) in self.pairs.iter().enumerate() {
             if a < b && !covered[position] {
                 let mut clique = vec![a, b];
                 self.grow(&mut clique);
                 self.mark(&clique, &mut covered);
-                cliques.push(at_most_one(&clique, None));
+                cliques.push(at_most_one(&clique, None, 0.0));
             }
         }
         cliques
@@ -202,9 +257,9 @@ impl<'i> Graph<'i> {
     }
 }
 
-fn at_most_one(clique: &[u32], source: Option<u32>) -> Inequality {
+fn at_most_one(clique: &[u32], source: Option<u32>, price: f64) -> Inequality {
     let terms = clique.iter().map(|&var| (var, 1)).collect();
-    Inequality { terms, right: 1, cap: None, source }
+    Inequality { terms, right: 1, cap: None, source, price }
 }
 
 /// Soft clashes, those of one candidate with one group together: of costs c1 ≤ c2 ≤ … the step from
@@ -232,6 +287,7 @@ fn stars(index: &Index) -> Vec<Inequality> {
                         right: 1,
                         cap: Some(cost - paid),
                         source: None,
+                        price: 0.0,
                     });
                     paid = cost;
                 }

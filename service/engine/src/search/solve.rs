@@ -1,5 +1,7 @@
 //! The search as a whole: what is asked for, what comes back, and the order of the steps.
 
+use std::sync::atomic::AtomicU64;
+
 use super::budget::{Budget, Watch};
 use super::check::Violation;
 use super::greedy;
@@ -8,6 +10,7 @@ use super::index::Index;
 use super::model::{Choice, Defect, Model};
 use super::part::{Aim, solve_split};
 use super::presolve::{Demand, Live, presolve};
+use super::relaxation::Hints;
 use super::split::{Split, split};
 use super::state::State;
 
@@ -137,7 +140,8 @@ impl Solution {
 /// The first [`Defect`] of the model.
 pub fn solve(model: &Model, options: &SolveOptions, watch: Watch<'_>) -> Result<Solution, Defect> {
     let index = Index::new(model)?;
-    let mut budget = Budget::new(options.work, watch);
+    let meter = AtomicU64::new(0);
+    let mut budget = Budget::new(options.work, watch, &meter);
     let live = presolve(&index, &mut budget);
     let start = options.start.as_ref().filter(|start| index.fits(start));
     let start = start.and_then(|start| State::new(&index, start));
@@ -159,7 +163,15 @@ pub fn solve(model: &Model, options: &SolveOptions, watch: Watch<'_>) -> Result<
     let presolved = Presolved::of(&index, &live, Some(&cut));
     let aim = Aim { gap: options.gap };
     let first: Vec<u32> = first.into_iter().map(|var| live.stand_in(var)).collect();
-    let (chosen, bound, row_prices) = solve_split(&index, &cut, &first, aim, &mut budget);
+    let nothing = Hints::default();
+    let (chosen, bound, answers) =
+        solve_split(&index, &cut, &first, (None, i64::MAX), &nothing, aim, &mut budget);
+    let mut row_prices = vec![0.0; index.slack.len()];
+    for (part, answer) in cut.parts.iter().zip(&answers) {
+        for (&row, &price) in part.rows.iter().zip(&answer.hints.rows) {
+            row_prices[row as usize] = price;
+        }
+    }
     let mut best = State::of_vars(&index, chosen);
     let rank = |state: &State<'_>| (state.is_feasible(), state.objective());
     best = start.filter(|start| rank(start) > rank(&best)).unwrap_or(best);
@@ -231,6 +243,5 @@ fn answer(
             }
         }
     }
-    budget.report(solution.objective, bound);
     solution
 }

@@ -14,6 +14,8 @@ pub(super) struct Part {
     pub(super) vars: Vec<u32>,
     /// The row of the larger index that each row here stands for.
     pub(super) rows: Vec<u32>,
+    /// (row here, row of the larger index) where the latter says the same, but no more.
+    pub(super) twins: Vec<(u32, u32)>,
 }
 
 /// An index with everything settled taken out.
@@ -164,7 +166,7 @@ fn cut_out(index: &Index, live: &Live, groups: &[u32], seam: &Seam) -> Part {
     }
     let local = |var: u32| vars.binary_search(&var).ok().map(|var| var as u32);
     let pairs = cut_pairs(index, live, &vars, &local);
-    let mut rows = cut_firm_rows(index, live, seam, &local);
+    let (mut rows, twins) = cut_firm_rows(index, live, seam, &local);
     let firm_rows = rows.len() as u32;
     let loose: Vec<u32> = seam
         .rows
@@ -201,7 +203,7 @@ fn cut_out(index: &Index, live: &Live, groups: &[u32], seam: &Seam) -> Part {
         any_of_rows: Lists::collect(seam.any_ofs.len(), &any_of_rows),
         row_any_ofs: Lists::collect(rows.len(), &row_any_ofs),
     };
-    Part { index, vars, rows: rows.into_iter().map(|row| row.source).collect() }
+    Part { index, vars, rows: rows.into_iter().map(|row| row.source).collect(), twins }
 }
 
 /// Clashes within a part, and values less the costs of clashes with what is settled.
@@ -234,19 +236,29 @@ fn cut_pairs(
     pairs
 }
 
-/// Firm rows; of those with the same terms only the tightest.
+/// Firm rows; of those with the same terms only the tightest, and the others as its twins.
 fn cut_firm_rows(
     index: &Index,
     live: &Live,
     seam: &Seam,
     local: &impl Fn(u32) -> Option<u32>,
-) -> Vec<CutRow> {
+) -> (Vec<CutRow>, Vec<(u32, u32)>) {
     let firm = seam.rows.iter().filter(|&&row| live.rows[row as usize] == Demand::Firm);
     let mut rows: Vec<CutRow> = firm.map(|&row| CutRow::new(index, live, row, local)).collect();
     rows.sort_unstable_by(|a, b| (&a.terms, a.slack, a.source).cmp(&(&b.terms, b.slack, b.source)));
-    rows.dedup_by(|a, kept| a.terms == kept.terms);
+    let mut twins = Vec::new();
+    rows.dedup_by(|a, kept| {
+        let same = a.terms == kept.terms;
+        if same {
+            twins.push((kept.source, a.source));
+        }
+        same
+    });
     rows.sort_unstable_by_key(|row| row.source);
-    rows
+    for (kept, _) in &mut twins {
+        *kept = rows.partition_point(|row| row.source < *kept) as u32;
+    }
+    (rows, twins)
 }
 
 /// What is left of a row.
