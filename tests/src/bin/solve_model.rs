@@ -40,6 +40,9 @@ struct Args {
     /// Solve so many times and print the shortest time.
     #[arg(long, default_value_t = 1)]
     repeat: u32,
+    /// Print seconds and objective of every better plan, too.
+    #[arg(long)]
+    plans: bool,
     /// Tell of every step on standard error.
     #[arg(long)]
     verbose: bool,
@@ -100,7 +103,7 @@ fn run(file: &Path, args: &Args) -> Result<(), Failure> {
         told.iter().find(near).map(|news| news.0)
     };
     let presolved = solution.presolved;
-    let line = json!({
+    let mut line = json!({
         "instance": instance.name,
         "objective": solution.objective,
         "bound": solution.bound,
@@ -125,6 +128,13 @@ fn run(file: &Path, args: &Args) -> Result<(), Failure> {
         "parts": presolved.components,
         "largest_part": presolved.largest_component,
     });
+    if args.plans {
+        let mut plans: Vec<(f64, i64)> =
+            told.iter().map(|news| (news.0, news.1.objective)).collect();
+        plans.push((seconds, solution.objective));
+        plans.dedup_by_key(|plan| plan.1);
+        line["plans"] = json!(plans);
+    }
     writeln!(std::io::stdout(), "{line}")?;
     Ok(())
 }

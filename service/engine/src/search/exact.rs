@@ -300,7 +300,7 @@ impl<'i> Tree<'i> {
             if state.is_feasible() { None } else { self.group_in_broken(&state, &node.left) };
         if state.is_feasible() {
             self.known.offer(&state);
-            improve::polish(&mut state, budget);
+            improve::polish(&mut state, None, budget);
             self.known.offer(&state);
             if node.bound < self.known.target() {
                 return Fate::Closed;

@@ -8,20 +8,20 @@ use super::state::{Blocker, State};
 /// All small changes for the better, if the state is feasible; it is maximal then.
 pub(super) fn climb(state: &mut State<'_>, budget: &mut Budget<'_>) {
     if state.is_feasible() {
-        polish(state, budget);
+        polish(state, None, budget);
         exchange_all(state, budget);
-        polish(state, budget);
+        polish(state, None, budget);
     }
 }
 
-/// Makes single switches that gain and break nothing until there is none: the state is then
-/// *maximal*. Not limited by the budget, as every answer promises to be maximal; each switch gains
-/// at least 1 and passes are few.
-pub(super) fn polish(state: &mut State<'_>, budget: &mut Budget<'_>) {
+/// Makes single switches that gain and break nothing until there is none, but leaves one group as
+/// it is if told so: the state is then *maximal*. Not limited by the budget, as every answer promises
+/// to be maximal; each switch gains at least 1 and passes are few.
+pub(super) fn polish(state: &mut State<'_>, keep: Option<u32>, budget: &mut Budget<'_>) {
     loop {
         let mut changed = false;
         for group in 0..state.index.groups() {
-            changed |= switch_to_best(state, group, budget);
+            changed |= keep != Some(group) && switch_to_best(state, group, budget);
         }
         if !changed {
             return;
@@ -71,27 +71,57 @@ fn exchange_all(state: &mut State<'_>, budget: &mut Budget<'_>) {
 fn exchange(state: &mut State<'_>, var: u32, budget: &mut Budget<'_>) -> bool {
     let before = state.objective();
     let mut undo = Vec::new();
+    let cleared = make_way(state, var, &mut undo, budget);
+    let better = cleared && state.objective() > before;
+    if !better {
+        undo_all(state, &undo);
+    }
+    better
+}
+
+/// Switches to `var` at the least loss that is found, if a way is; the state stays feasible.
+pub(super) fn force(state: &mut State<'_>, var: u32, budget: &mut Budget<'_>) -> bool {
+    let mut undo = Vec::new();
+    let forced = state.index.allowed[var as usize] && make_way(state, var, &mut undo, budget);
+    if !forced {
+        undo_all(state, &undo);
+    }
+    forced
+}
+
+/// Makes firm rows hold that are broken, at the least loss that is found, if a way is.
+pub(super) fn hold(state: &mut State<'_>, rows: &[u32], budget: &mut Budget<'_>) -> bool {
+    let mut undo = Vec::new();
+    let held = rows.iter().all(|&row| relieve(state, row, None, &mut undo, budget));
+    if held && state.is_feasible() {
+        fill_around(state, None, &mut undo, budget);
+    }
+    state.is_feasible()
+}
+
+fn undo_all(state: &mut State<'_>, undo: &[u32]) {
+    for &old in undo.iter().rev() {
+        state.switch_to(old);
+    }
+}
+
+fn make_way(state: &mut State<'_>, var: u32, undo: &mut Vec<u32>, budget: &mut Budget<'_>) -> bool {
+    let kept = Some(state.index.group_of[var as usize]);
     let blockers = state.blockers(state.index.choice(var));
-    record_switch(state, var, &mut undo);
+    record_switch(state, var, undo);
     let cleared = blockers.iter().all(|blocker| match *blocker {
         Blocker::Forbidden => false,
         Blocker::Clash { with } => {
             let other = state.chosen[with.group as usize];
-            state.hits[other as usize] == 0 || move_aside(state, with.group, &mut undo, budget)
+            state.hits[other as usize] == 0 || move_aside(state, with.group, undo, budget)
         }
-        Blocker::Row { row, .. } => relieve(state, row as u32, var, &mut undo, budget),
-        Blocker::AnyOf { any_of } => relieve_any(state, any_of as u32, var, &mut undo, budget),
+        Blocker::Row { row, .. } => relieve(state, row as u32, kept, undo, budget),
+        Blocker::AnyOf { any_of } => relieve_any(state, any_of as u32, kept, undo, budget),
     });
     if cleared && state.is_feasible() {
-        fill_around(state, &mut undo, budget);
+        fill_around(state, kept, undo, budget);
     }
-    let better = cleared && state.is_feasible() && state.objective() > before;
-    if !better {
-        for &old in undo.iter().rev() {
-            state.switch_to(old);
-        }
-    }
-    better
+    cleared && state.is_feasible()
 }
 
 fn record_switch(state: &mut State<'_>, var: u32, undo: &mut Vec<u32>) {
@@ -117,22 +147,21 @@ fn move_aside(
     })
 }
 
-/// Moves groups other than that of `keep` until the row holds, least loss for the relief first.
+/// Moves groups other than `kept` until the row holds, least loss for the relief first.
 fn relieve(
     state: &mut State<'_>,
     row: u32,
-    keep: u32,
+    kept: Option<u32>,
     undo: &mut Vec<u32>,
     budget: &mut Budget<'_>,
 ) -> bool {
     let index = state.index;
-    let kept = index.group_of[keep as usize];
     while state.sum[row as usize] > index.slack[row as usize] {
         let mut best: Option<(f64, u32)> = None;
         let mut last_group = u32::MAX;
         for &(term, _) in &index.row_terms[row] {
             let group = index.group_of[term as usize];
-            if group == kept || group == last_group {
+            if Some(group) == kept || group == last_group {
                 continue;
             }
             last_group = group;
@@ -160,18 +189,24 @@ fn relieve(
 fn relieve_any(
     state: &mut State<'_>,
     any_of: u32,
-    keep: u32,
+    kept: Option<u32>,
     undo: &mut Vec<u32>,
     budget: &mut Budget<'_>,
 ) -> bool {
     let excess = |row: u32| state.sum[row as usize] - state.index.slack[row as usize];
     let nearest =
         state.index.any_of_rows[any_of].iter().copied().min_by_key(|&row| (excess(row), row));
-    nearest.is_some_and(|row| relieve(state, row, keep, undo, budget))
+    nearest.is_some_and(|row| relieve(state, row, kept, undo, budget))
 }
 
-/// Makes the switches that gain among the groups that share a clash or row with what was left.
-fn fill_around(state: &mut State<'_>, undo: &mut Vec<u32>, budget: &mut Budget<'_>) {
+/// Makes the switches that gain among the groups, other than `kept`, that share a clash or row with
+/// what was left.
+fn fill_around(
+    state: &mut State<'_>,
+    kept: Option<u32>,
+    undo: &mut Vec<u32>,
+    budget: &mut Budget<'_>,
+) {
     let index = state.index;
     let mut near = Vec::new();
     for &left in undo.iter() {
@@ -184,7 +219,8 @@ fn fill_around(state: &mut State<'_>, undo: &mut Vec<u32>, budget: &mut Budget<'
     near.sort_unstable();
     near.dedup();
     budget.spend(near.len());
-    near.retain(|&var| index.allowed[var as usize] && state.gain_of(var) > 0);
+    let may = |var: u32| index.allowed[var as usize] && kept != Some(index.group_of[var as usize]);
+    near.retain(|&var| may(var) && state.gain_of(var) > 0);
     near.sort_unstable_by_key(|&var| (std::cmp::Reverse(state.gain_of(var)), var));
     for var in near {
         if state.gain_of(var) > 0 && state.allows_var(var) {

@@ -99,14 +99,7 @@ impl Index {
         let vars = value.len();
         let (hard, soft) = clash_lists(model, &first, vars);
         let rows = RowTable::new(model, &first);
-        let by_var: Vec<_> = (rows.terms.iter().enumerate())
-            .flat_map(|(row, terms)| {
-                terms.iter().map(move |&(var, delta)| (var, (row as u32, delta)))
-            })
-            .collect();
-        let by_row: Vec<_> = (rows.terms.iter().enumerate())
-            .flat_map(|(row, terms)| terms.iter().map(move |&term| (row as u32, term)))
-            .collect();
+        let (row_terms, var_terms) = both_ways(&rows.terms, vars);
         let by_any_of: Vec<_> =
             rows.any_of_rows.iter().map(|&(row, any_of)| (any_of, row)).collect();
         Ok(Self {
@@ -117,12 +110,43 @@ impl Index {
             hard,
             soft,
             firm_rows: model.rows.len() as u32,
-            row_terms: Lists::collect(rows.slack.len(), &by_row),
-            var_terms: Lists::collect(vars, &by_var),
+            row_terms,
+            var_terms,
             any_of_rows: Lists::collect(model.any_ofs.len(), &by_any_of),
             row_any_ofs: Lists::collect(rows.slack.len(), &rows.any_of_rows),
             slack: rows.slack,
         })
+    }
+
+    /// The same with more firm rows, which come right after the others.
+    pub(super) fn with_rows(&self, rows: &[Row]) -> Self {
+        let firm = self.firm_rows as usize;
+        let added: Vec<_> = rows.iter().map(|row| merged_terms(row, &self.first)).collect();
+        let old = |row: u32| self.row_terms[row].to_vec();
+        let count = self.slack.len() as u32;
+        let terms: Vec<Vec<(u32, i64)>> = (0..self.firm_rows)
+            .map(old)
+            .chain(added)
+            .chain((self.firm_rows..count).map(old))
+            .collect();
+        let mut slack = self.slack.clone();
+        slack.splice(firm..firm, rows.iter().map(|row| row.slack));
+        let by_any_of: Vec<(u32, u32)> = (0..self.any_of_rows.len() as u32)
+            .flat_map(|any_of| self.any_of_rows[any_of].iter().map(move |&row| (any_of, row)))
+            .map(|(any_of, row)| (any_of, row + rows.len() as u32))
+            .collect();
+        let by_row: Vec<(u32, u32)> =
+            by_any_of.iter().map(|&(any_of, row)| (row, any_of)).collect();
+        let (row_terms, var_terms) = both_ways(&terms, self.value.len());
+        Self {
+            slack,
+            firm_rows: self.firm_rows + rows.len() as u32,
+            row_terms,
+            var_terms,
+            any_of_rows: Lists::collect(self.any_of_rows.len(), &by_any_of),
+            row_any_ofs: Lists::collect(terms.len(), &by_row),
+            ..self.clone()
+        }
     }
 
     pub(super) fn groups(&self) -> u32 {
@@ -157,6 +181,18 @@ impl Index {
                 .zip(choices)
                 .all(|(group, &candidate)| self.var(Choice { group, candidate }).is_some())
     }
+}
+
+type Terms = Lists<(u32, i64)>;
+
+/// Terms by row, and the same by variable.
+fn both_ways(terms: &[Vec<(u32, i64)>], vars: usize) -> (Terms, Terms) {
+    let by_row: Vec<_> = (0u32..)
+        .zip(terms)
+        .flat_map(|(row, terms)| terms.iter().map(move |&term| (row, term)))
+        .collect();
+    let by_var: Vec<_> = by_row.iter().map(|&(row, (var, delta))| (var, (row, delta))).collect();
+    (Lists::collect(terms.len(), &by_row), Lists::collect(vars, &by_var))
 }
 
 type ClashLists = (Lists<u32>, Lists<(u32, i64)>);

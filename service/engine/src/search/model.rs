@@ -212,19 +212,19 @@ impl Model {
     }
 
     fn defect_in_rows(&self) -> Option<Defect> {
-        for row in self.all_rows() {
-            let mut size = row.slack.unsigned_abs();
-            for &(choice, delta) in &row.terms {
-                if self.candidate(choice).is_none() {
-                    return Some(Defect::UnknownChoice { choice });
-                }
-                size = size.saturating_add(u64::from(delta.unsigned_abs()));
+        self.all_rows().find_map(|row| self.defect_in_row(row))
+    }
+
+    /// What makes a row unfit to stand in this model, if anything does.
+    pub(super) fn defect_in_row(&self, row: &Row) -> Option<Defect> {
+        let mut size = row.slack.unsigned_abs();
+        for &(choice, delta) in &row.terms {
+            if self.candidate(choice).is_none() {
+                return Some(Defect::UnknownChoice { choice });
             }
-            if size >= LIMIT {
-                return Some(Defect::TooLarge);
-            }
+            size = size.saturating_add(u64::from(delta.unsigned_abs()));
         }
-        None
+        (size >= LIMIT).then_some(Defect::TooLarge)
     }
 
     fn defect_in_size(&self) -> Option<Defect> {

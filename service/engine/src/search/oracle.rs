@@ -173,21 +173,44 @@ fn best_differing(model: &Model, plans: &[Solution], min_difference: usize) -> O
 
 #[test]
 fn forced_choices_are_made_at_the_least_cost() {
-    for seed in 0..600 {
+    for seed in 0..1500 {
         let mut rng = Pcg64::seed_from_u64(seed);
-        let model = random_model(&mut rng, false);
+        let model = random_model(&mut rng, seed % 3 == 0);
         let options = SolveOptions::default();
-        let solution = solve(&model, &options, Watch::unattended()).unwrap();
-        let forced = any_choice(&mut rng, &model);
-        let mut fixed = model.clone();
-        fixed.groups[forced.group as usize].fix(forced.candidate);
-        let answer = solve_forced(&model, &solution, forced, &options, Watch::unattended());
-        if !model.candidate(forced).unwrap().allowed {
-            assert_eq!(answer, Err(Defect::NothingAllowed { group: forced.group }));
-            continue;
+        let mut search = Search::new(&model).unwrap();
+        search.solve(&options, Watch::unattended());
+        for group in 0..model.groups.len() as u32 {
+            for candidate in 0..model.groups[group as usize].candidates.len() as u32 {
+                let forced = choice(group, candidate);
+                let answer = search.solve_forced(forced, &options, Watch::unattended());
+                if !model.candidate(forced).unwrap().allowed {
+                    assert_eq!(answer, Err(Defect::NothingAllowed { group }));
+                    continue;
+                }
+                let mut fixed = model.clone();
+                fixed.groups[group as usize].fix(candidate);
+                let best = enumerate(&fixed).first().map(|&(objective, _)| objective);
+                check(&fixed, best, &answer.unwrap());
+            }
         }
-        let best = enumerate(&fixed).first().map(|&(objective, _)| objective);
-        check(&fixed, best, &answer.unwrap());
+    }
+}
+
+#[test]
+fn further_rows_are_kept_at_the_least_cost() {
+    for seed in 0..1500 {
+        let mut rng = Pcg64::seed_from_u64(seed);
+        let mut model = random_model(&mut rng, seed % 3 == 0);
+        let without = model.clone();
+        let options = SolveOptions::default();
+        let mut search = Search::new(&without).unwrap();
+        search.solve(&options, Watch::unattended());
+        let slack = rng.random_range(-1..=2);
+        let rows = [random_row(&mut rng, &model, slack), random_row(&mut rng, &model, 2)];
+        let answer = search.solve_within(&rows, &options, Watch::unattended()).unwrap();
+        model.rows.extend(rows);
+        let best = enumerate(&model).first().map(|&(objective, _)| objective);
+        check(&model, best, &answer);
     }
 }
 

@@ -174,7 +174,7 @@ fn again(
     let (chosen, bound, _) = solve_split(index, &cut, &start, best, hints, aim, budget);
     let mut state = State::of_vars(index, chosen);
     if state.is_feasible() {
-        improve::polish(&mut state, budget);
+        improve::polish(&mut state, None, budget);
     }
     known.offer(&state);
     known.bound = known.bound.min(bound).max(known.objective.unwrap_or(i64::MIN));

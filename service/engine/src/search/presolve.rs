@@ -20,7 +20,12 @@ pub(super) struct Live {
     /// Any-ofs that can still be broken and have several rows left.
     pub(super) any_ofs: Vec<bool>,
     /// For a candidate that was dropped in favour of a mate, the mate; else the candidate itself.
-    stand_in: Vec<u32>,
+    pub(super) stand_in: Vec<u32>,
+    /// At least how much better its stand-in is.
+    spare: Vec<i64>,
+    /// When each candidate was ruled out, counted; the greatest number there is while it is not.
+    pub(super) ruled_at: Vec<u32>,
+    ruled: u32,
     /// Nothing is feasible.
     pub(super) infeasible: bool,
 }
@@ -55,6 +60,9 @@ impl Live {
             rows: (0..index.slack.len() as u32).map(firm).collect(),
             any_ofs: vec![true; index.any_of_rows.len()],
             stand_in: (0..index.value.len() as u32).collect(),
+            spare: vec![0; index.value.len()],
+            ruled_at: vec![u32::MAX; index.value.len()],
+            ruled: 0,
             infeasible: false,
         };
         for (var, &allowed) in (0u32..).zip(&index.allowed) {
@@ -96,12 +104,36 @@ impl Live {
         var
     }
 
+    /// At least how much feasible choices lose by this candidate, compared with its stand-in.
+    pub(super) fn spare(&self, mut var: u32) -> i64 {
+        let mut sum = 0i64;
+        while self.stand_in[var as usize] != var {
+            sum = sum.saturating_add(self.spare[var as usize]);
+            var = self.stand_in[var as usize];
+        }
+        sum
+    }
+
+    /// Takes back that a candidate was ruled out; true if it was.
+    pub(super) fn restore(&mut self, index: &Index, var: u32) -> bool {
+        let ruled_out = !self.vars[var as usize];
+        if ruled_out {
+            self.vars[var as usize] = true;
+            self.count[index.group_of[var as usize] as usize] += 1;
+            self.stand_in[var as usize] = var;
+            self.ruled_at[var as usize] = u32::MAX;
+        }
+        ruled_out
+    }
+
     pub(super) fn rule_out(&mut self, index: &Index, var: u32) -> bool {
         if !self.vars[var as usize] {
             return false;
         }
         let group = index.group_of[var as usize] as usize;
         self.vars[var as usize] = false;
+        self.ruled_at[var as usize] = self.ruled;
+        self.ruled += 1;
         self.count[group] -= 1;
         self.infeasible |= self.count[group] == 0;
         true
@@ -245,12 +277,15 @@ impl Live {
                 if !self.vars[var as usize] {
                     continue;
                 }
-                let better = index.vars(group).find(|&mate| {
+                let better = index.vars(group).find_map(|mate| {
                     budget.spend(1);
-                    mate != var && self.vars[mate as usize] && self.dominates(index, mate, var)
+                    let other = mate != var && self.vars[mate as usize];
+                    let spare = other.then(|| self.dominates(index, mate, var)).flatten();
+                    spare.map(|spare| (mate, spare))
                 });
-                if let Some(mate) = better {
+                if let Some((mate, spare)) = better {
                     self.stand_in[var as usize] = mate;
+                    self.spare[var as usize] = spare;
                     changed |= self.rule_out(index, var);
                 }
             }
@@ -258,13 +293,17 @@ impl Live {
         changed
     }
 
-    /// Whether exchanging `worse` for `better` never breaks anything and never loses.
-    fn dominates(&self, index: &Index, better: u32, worse: u32) -> bool {
+    /// At least how much is gained by exchanging `worse` for `better`, if that never breaks anything
+    /// and never loses.
+    fn dominates(&self, index: &Index, better: u32, worse: u32) -> Option<i64> {
         let spare = index.value[better as usize] - index.value[worse as usize];
-        spare >= 0
-            && self.clashes_within(index, better, worse)
-            && self.costs_within(index, better, worse, spare)
-            && self.deltas_within(index, better, worse)
+        if spare < 0
+            || !self.clashes_within(index, better, worse)
+            || !self.deltas_within(index, better, worse)
+        {
+            return None;
+        }
+        Some(spare - self.extra_costs(index, better, worse)).filter(|&spare| spare >= 0)
     }
 
     fn clashes_within(&self, index: &Index, better: u32, worse: u32) -> bool {
@@ -274,7 +313,7 @@ impl Live {
         index.hard[better].iter().all(covered)
     }
 
-    fn costs_within(&self, index: &Index, better: u32, worse: u32, spare: i64) -> bool {
+    fn extra_costs(&self, index: &Index, better: u32, worse: u32) -> i64 {
         let theirs = &index.soft[worse];
         let extra = |&(other, cost): &(u32, i64)| {
             if !self.vars[other as usize] || index.hard[worse].binary_search(&other).is_ok() {
@@ -283,7 +322,7 @@ impl Live {
             let same = theirs.binary_search_by_key(&other, |&(other, _)| other);
             (cost - same.map_or(0, |position| theirs[position].1)).max(0)
         };
-        index.soft[better].iter().map(extra).sum::<i64>() <= spare
+        index.soft[better].iter().map(extra).sum()
     }
 
     fn deltas_within(&self, index: &Index, better: u32, worse: u32) -> bool {

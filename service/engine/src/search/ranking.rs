@@ -4,7 +4,7 @@
 
 use super::budget::Watch;
 use super::model::{Defect, Model, Row, choice};
-use super::solve::{Solution, SolveOptions, Stopped, solve};
+use super::solve::{Search, Solution, SolveOptions, Stopped};
 
 /// How many plans, and how different.
 #[derive(Debug, Clone, PartialEq)]
@@ -17,9 +17,30 @@ pub struct RankOptions {
     pub solve: SolveOptions,
 }
 
-/// The best plan, the best of those that differ enough from it, and so on; fewer than asked for if
-/// no more exist or none was found. A bound speaks of all plans that differ enough from the better
-/// ones listed. A plan after the first is maximal among those.
+impl Search<'_> {
+    /// The best plan, the best of those that differ enough from it, and so on; fewer than asked for
+    /// if no more exist or none was found. A bound speaks of all plans that differ enough from the
+    /// better ones listed. A plan after the first is maximal among those.
+    pub fn rank(&mut self, options: &RankOptions, watch: Watch<'_>) -> Vec<Solution> {
+        let mut plans = vec![self.solve(&options.solve, watch)];
+        let mut rows = Vec::new();
+        while plans.len() < options.plans
+            && let Some(last) = plans.last()
+            && last.bound.is_some()
+            && last.stopped != Stopped::Asked
+        {
+            rows.push(differ(&last.choices, options.min_difference.max(1)));
+            let ask = SolveOptions { start: Some(last.choices.clone()), ..options.solve.clone() };
+            match self.solve_within(&rows, &ask, watch) {
+                Ok(next) if next.bound.is_some() => plans.push(next),
+                Ok(_) | Err(_) => break,
+            }
+        }
+        plans
+    }
+}
+
+/// Ranks plans: [`Search::rank`] for a single question.
 ///
 /// # Errors
 /// The first [`Defect`] of the model.
@@ -28,30 +49,7 @@ pub fn rank(
     options: &RankOptions,
     watch: Watch<'_>,
 ) -> Result<Vec<Solution>, Defect> {
-    let mut model = model.clone();
-    let mut plans: Vec<Solution> = Vec::new();
-    let own_rows = model.rows.len();
-    for _ in 0..options.plans {
-        let mut ask = options.solve.clone();
-        if let Some(better) = plans.last() {
-            ask.start = Some(better.choices.clone());
-        }
-        let mut solution = solve(&model, &ask, watch)?;
-        if !solution.violations.is_empty() {
-            if plans.is_empty() {
-                plans.push(solution);
-            }
-            break;
-        }
-        solution.row_prices.truncate(own_rows);
-        model.rows.push(differ(&solution.choices, options.min_difference.max(1)));
-        let stopped = solution.stopped;
-        plans.push(solution);
-        if stopped == Stopped::Asked {
-            break;
-        }
-    }
-    Ok(plans)
+    Ok(Search::new(model)?.rank(options, watch))
 }
 
 fn differ(choices: &[u32], at_least: usize) -> Row {

@@ -7,9 +7,9 @@ use super::check::Violation;
 use super::greedy;
 use super::improve;
 use super::index::Index;
-use super::model::{Choice, Defect, Model};
-use super::part::{Aim, solve_split};
-use super::presolve::{Demand, Live, presolve};
+use super::model::{Defect, Model};
+use super::part::{Aim, Answer, solve_split};
+use super::presolve::{Demand, Live};
 use super::relaxation::Hints;
 use super::split::{Split, split};
 use super::state::State;
@@ -134,75 +134,155 @@ impl Solution {
     }
 }
 
-/// Searches for the best choices.
+/// A model under search, with what is known of it: later questions about it start from there.
+#[derive(Debug)]
+pub struct Search<'m> {
+    pub(super) model: &'m Model,
+    pub(super) index: Index,
+    pub(super) found: Option<Found>,
+}
+
+/// What a search found out.
+#[derive(Debug)]
+pub(super) struct Found {
+    pub(super) live: Live,
+    pub(super) cut: Split,
+    pub(super) answers: Vec<Answer>,
+    pub(super) presolved: Presolved,
+    /// The best choices, as variables: feasible.
+    pub(super) chosen: Vec<u32>,
+    pub(super) bound: i64,
+}
+
+impl Found {
+    /// The prices of some of the parts, in the numbering of the whole.
+    pub(super) fn hints(&self, index: &Index, of: impl Fn(usize) -> bool) -> Hints {
+        let mut hints = Hints { rows: vec![0.0; index.slack.len()], cliques: Vec::new() };
+        for (position, (part, answer)) in self.cut.parts.iter().zip(&self.answers).enumerate() {
+            if !of(position) {
+                continue;
+            }
+            for (&row, &price) in part.rows.iter().zip(&answer.hints.rows) {
+                hints.rows[row as usize] = price;
+            }
+            let whole =
+                |clique: &[u32]| clique.iter().map(|&var| part.vars[var as usize]).collect();
+            let cliques = answer.hints.cliques.iter();
+            hints.cliques.extend(cliques.map(|(clique, price)| (whole(clique), *price)));
+        }
+        hints
+    }
+}
+
+impl<'m> Search<'m> {
+    /// Makes a model ready.
+    ///
+    /// # Errors
+    /// The first [`Defect`] of the model.
+    pub fn new(model: &'m Model) -> Result<Self, Defect> {
+        Ok(Self { model, index: Index::new(model)?, found: None })
+    }
+
+    /// Everything about the model that is looked up in both directions.
+    #[must_use]
+    pub fn index(&self) -> &Index {
+        &self.index
+    }
+
+    /// Searches for the best choices.
+    pub fn solve(&mut self, options: &SolveOptions, watch: Watch<'_>) -> Solution {
+        let index = &self.index;
+        let meter = AtomicU64::new(0);
+        let mut budget = Budget::new(options.work, watch, &meter);
+        let mut live = Live::new(index);
+        live.reason(index, &mut budget);
+        let start = options.start.as_ref().and_then(|start| State::new(index, start));
+        let outcome = search(index, live, &Hints::default(), start, options, &mut budget);
+        let solution = outcome.solution(self.model, &budget, options);
+        self.found = outcome.found();
+        solution
+    }
+}
+
+/// How a search of a whole index ended.
+pub(super) struct Outcome<'i> {
+    pub(super) best: State<'i>,
+    pub(super) bound: i64,
+    presolved: Presolved,
+    live: Live,
+    parts: Option<(Split, Vec<Answer>)>,
+}
+
+/// Searches what is left of an index.
+pub(super) fn search<'i>(
+    index: &'i Index,
+    live: Live,
+    hints: &Hints,
+    start: Option<State<'i>>,
+    options: &SolveOptions,
+    budget: &mut Budget<'_>,
+) -> Outcome<'i> {
+    let first = start.as_ref().map_or_else(|| rest(index), |state| state.chosen.clone());
+    if live.infeasible {
+        let mut best = State::of_vars(index, first);
+        greedy::repair(&mut best, budget);
+        let presolved = Presolved::of(index, &live, None);
+        return Outcome { best, bound: i64::MIN, presolved, live, parts: None };
+    }
+    let cut = split(index, &live);
+    let presolved = Presolved::of(index, &live, Some(&cut));
+    let first: Vec<u32> = first.into_iter().map(|var| live.stand_in(var)).collect();
+    let aim = Aim { gap: options.gap };
+    let (chosen, bound, answers) =
+        solve_split(index, &cut, &first, (None, i64::MAX), hints, aim, budget);
+    let mut best = State::of_vars(index, chosen);
+    let rank = |state: &State<'_>| (state.is_feasible(), state.objective());
+    best = start.filter(|start| rank(start) > rank(&best)).unwrap_or(best);
+    if best.is_feasible() {
+        improve::polish(&mut best, None, budget);
+    }
+    Outcome { best, bound, presolved, live, parts: Some((cut, answers)) }
+}
+
+impl Outcome<'_> {
+    pub(super) fn solution(
+        &self,
+        model: &Model,
+        budget: &Budget<'_>,
+        options: &SolveOptions,
+    ) -> Solution {
+        let mut row_prices = vec![0.0; self.best.index.slack.len()];
+        for (part, answer) in
+            self.parts.iter().flat_map(|(cut, answers)| cut.parts.iter().zip(answers))
+        {
+            for (&row, &price) in part.rows.iter().zip(&answer.hints.rows) {
+                row_prices[row as usize] = price;
+            }
+        }
+        row_prices.truncate(model.rows.len());
+        answer(model, &self.best, self.bound, self.presolved, row_prices, budget, options)
+    }
+
+    fn found(self) -> Option<Found> {
+        let (cut, answers) = self.parts?;
+        let feasible = self.best.is_feasible();
+        feasible.then_some(Found {
+            live: self.live,
+            cut,
+            answers,
+            presolved: self.presolved,
+            chosen: self.best.chosen,
+            bound: self.bound,
+        })
+    }
+}
+
+/// Searches for the best choices: [`Search::solve`] for a single question.
 ///
 /// # Errors
 /// The first [`Defect`] of the model.
 pub fn solve(model: &Model, options: &SolveOptions, watch: Watch<'_>) -> Result<Solution, Defect> {
-    let index = Index::new(model)?;
-    let meter = AtomicU64::new(0);
-    let mut budget = Budget::new(options.work, watch, &meter);
-    let live = presolve(&index, &mut budget);
-    let start = options.start.as_ref().filter(|start| index.fits(start));
-    let start = start.and_then(|start| State::new(&index, start));
-    let first = start.as_ref().map_or_else(|| rest(&index), |state| state.chosen.clone());
-    if live.infeasible {
-        let mut state = State::of_vars(&index, first);
-        greedy::repair(&mut state, &mut budget);
-        return Ok(answer(
-            model,
-            &state,
-            i64::MIN,
-            Presolved::of(&index, &live, None),
-            vec![],
-            &budget,
-            options,
-        ));
-    }
-    let cut = split(&index, &live);
-    let presolved = Presolved::of(&index, &live, Some(&cut));
-    let aim = Aim { gap: options.gap };
-    let first: Vec<u32> = first.into_iter().map(|var| live.stand_in(var)).collect();
-    let nothing = Hints::default();
-    let (chosen, bound, answers) =
-        solve_split(&index, &cut, &first, (None, i64::MAX), &nothing, aim, &mut budget);
-    let mut row_prices = vec![0.0; index.slack.len()];
-    for (part, answer) in cut.parts.iter().zip(&answers) {
-        for (&row, &price) in part.rows.iter().zip(&answer.hints.rows) {
-            row_prices[row as usize] = price;
-        }
-    }
-    let mut best = State::of_vars(&index, chosen);
-    let rank = |state: &State<'_>| (state.is_feasible(), state.objective());
-    best = start.filter(|start| rank(start) > rank(&best)).unwrap_or(best);
-    if best.is_feasible() {
-        improve::polish(&mut best, &mut budget);
-    }
-    Ok(answer(model, &best, bound, presolved, row_prices, &budget, options))
-}
-
-/// Searches for the best choices among those that contain `forced`, starting from the choices of
-/// an earlier solution of the same model. The difference of the two objectives is what the forced
-/// choice costs; with both bounds closed it is the least it can cost.
-///
-/// # Errors
-/// The first [`Defect`] of the model, or of `forced` in it.
-pub fn solve_forced(
-    model: &Model,
-    solution: &Solution,
-    forced: Choice,
-    options: &SolveOptions,
-    watch: Watch<'_>,
-) -> Result<Solution, Defect> {
-    let mut model = model.clone();
-    let unknown = Defect::UnknownChoice { choice: forced };
-    model.candidate(forced).ok_or(unknown.clone())?;
-    model.groups.get_mut(forced.group as usize).ok_or(unknown)?.fix(forced.candidate);
-    let mut start = solution.choices.clone();
-    if let Some(chosen) = start.get_mut(forced.group as usize) {
-        *chosen = forced.candidate;
-    }
-    solve(&model, &SolveOptions { start: Some(start), ..options.clone() }, watch)
+    Ok(Search::new(model)?.solve(options, watch))
 }
 
 /// Candidate 0 of every group, or the first allowed one.
@@ -211,16 +291,15 @@ fn rest(index: &Index) -> Vec<u32> {
     (0..index.groups()).map(first).collect()
 }
 
-fn answer(
+pub(super) fn answer(
     model: &Model,
     best: &State<'_>,
     bound: i64,
     presolved: Presolved,
-    mut row_prices: Vec<f64>,
+    row_prices: Vec<f64>,
     budget: &Budget<'_>,
     options: &SolveOptions,
 ) -> Solution {
-    row_prices.resize(model.rows.len(), 0.0);
     let out_of_budget = if budget.told_to_stop() { Stopped::Asked } else { Stopped::Work };
     let mut solution = Solution {
         choices: best.choices(),

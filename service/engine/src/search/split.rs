@@ -23,6 +23,8 @@ pub(super) struct Part {
 pub(super) struct Split {
     /// What is connected, in the order of first groups.
     pub(super) parts: Vec<Part>,
+    /// The part of every group that is not settled; else the greatest number there is.
+    pub(super) part_of: Vec<u32>,
     /// The settled variables, one for each settled group.
     pub(super) settled: Vec<u32>,
     /// What the settled variables are worth together.
@@ -60,21 +62,22 @@ pub(super) fn split(index: &Index, live: &Live) -> Split {
         .zip(&seams)
         .map(|(part, seam)| cut_out(index, live, &groups[part], seam))
         .collect();
-    let settled_value = value_of_settled(index, live, &settled);
-    Split { parts, settled, settled_value }
+    let settled_value = value_of_settled(index, &settled);
+    Split { parts, part_of, settled, settled_value }
 }
 
 /// Constraints of a part, by their positions in the larger index.
 #[derive(Debug, Clone, Default)]
-struct Seam {
-    rows: Vec<u32>,
-    any_ofs: Vec<u32>,
+pub(super) struct Seam {
+    pub(super) rows: Vec<u32>,
+    pub(super) any_ofs: Vec<u32>,
 }
 
-fn value_of_settled(index: &Index, live: &Live, settled: &[u32]) -> i64 {
-    let is_settled = |var: u32| {
-        live.count[index.group_of[var as usize] as usize] == 1 && live.vars[var as usize]
-    };
+/// What settled variables are worth together.
+pub(super) fn value_of_settled(index: &Index, settled: &[u32]) -> i64 {
+    let mut is_settled = vec![false; index.value.len()];
+    settled.iter().for_each(|&var| is_settled[var as usize] = true);
+    let is_settled = |var: u32| is_settled[var as usize];
     let cost = |var: u32| -> i64 {
         let later = index.soft[var].iter().filter(|&&(other, _)| other > var && is_settled(other));
         later.map(|&(_, cost)| cost).sum()
@@ -155,7 +158,9 @@ fn number(sets: &mut UnionFind<u32>, open: &[bool]) -> Vec<u32> {
         .collect()
 }
 
-fn cut_out(index: &Index, live: &Live, groups: &[u32], seam: &Seam) -> Part {
+/// Cuts groups out, ascending, with those of the constraints that concern them and nothing open
+/// besides.
+pub(super) fn cut_out(index: &Index, live: &Live, groups: &[u32], seam: &Seam) -> Part {
     let mut vars = Vec::new();
     let mut first = vec![0];
     let mut group_of = Vec::new();
@@ -221,7 +226,9 @@ fn cut_pairs(
     local: &impl Fn(u32) -> Option<u32>,
 ) -> Pairs {
     let settled = |var: u32| {
-        live.vars[var as usize] && live.count[index.group_of[var as usize] as usize] == 1
+        live.vars[var as usize]
+            && live.count[index.group_of[var as usize] as usize] == 1
+            && local(var).is_none()
     };
     let mut pairs = Pairs::default();
     for (here, &var) in (0u32..).zip(vars) {
