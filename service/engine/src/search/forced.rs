@@ -50,7 +50,8 @@ impl Search<'_> {
         Ok(self.answer_about(&best, bound, found, &budget, options))
     }
 
-    fn answer_about(
+    /// An answer with the prices of the search before.
+    pub(super) fn answer_about(
         &self,
         best: &State<'_>,
         bound: i64,

@@ -40,6 +40,9 @@ impl Search<'_> {
         let start = start(&self.index, &index, found, options, &mut budget);
         let worth = start.is_feasible().then(|| start.objective());
         let most = worth.map_or(i64::MAX, |worth| found.bound.saturating_sub(worth));
+        if most <= 0 {
+            return Ok(self.answer_about(&start, found.bound, found, &budget, options));
+        }
         let mut live = reopened(&self.index, &index, found, most, &mut budget);
         live.reason(&index, &mut budget);
         let mut hints = found.hints(&self.index, |_| true);

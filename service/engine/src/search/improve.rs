@@ -66,10 +66,25 @@ fn exchange_all(state: &mut State<'_>, budget: &mut Budget<'_>) {
     }
 }
 
+/// Terms from which a row is too long to look all over it for an exchange.
+const LONG: usize = 600;
+
 /// Switches to `var`, moves what blocks it to the least loss, and fills the room that this leaves.
 /// Undone unless the objective rises.
 fn exchange(state: &mut State<'_>, var: u32, budget: &mut Budget<'_>) -> bool {
     let before = state.objective();
+    let index = state.index;
+    let full = |&(row, delta): &(u32, i64)| {
+        delta > 0
+            && index.row_terms[row].len() > LONG
+            && state.sum[row as usize] + delta > index.slack[row as usize]
+    };
+    let old = state.chosen[index.group_of[var as usize] as usize];
+    let relieved =
+        |row: u32| index.var_terms[old].iter().any(|&(other, by)| other == row && by > 0);
+    if index.var_terms[var].iter().any(|term| full(term) && !relieved(term.0)) {
+        return false;
+    }
     let mut undo = Vec::new();
     let cleared = make_way(state, var, &mut undo, budget);
     let better = cleared && state.objective() > before;
