@@ -4,6 +4,8 @@
 //! candidate, next to it or to something else that was, may have to come back. The groups where it
 //! does, and the parts that they touch, are searched again; all else stays as it was found.
 
+use std::cmp::Reverse;
+use std::collections::BinaryHeap;
 use std::sync::atomic::AtomicU64;
 
 use super::budget::{Budget, Watch};
@@ -139,7 +141,7 @@ impl Region {
     fn around(index: &Index, found: &Found, var: u32, budget: &mut Budget<'_>) -> Self {
         let mut live = found.live.clone();
         let mut marks = Marks::new(index);
-        let seeds = marks.restore(index, &mut live, &found.live, var, budget);
+        let seeds = marks.restore(index, &mut live, &found.live, &[var], budget);
         for mate in index.vars(index.group_of[var as usize]) {
             if mate != var {
                 live.rule_out(index, mate);
@@ -180,6 +182,7 @@ impl Region {
 pub(super) struct Marks {
     rows: Vec<bool>,
     any_ofs: Vec<bool>,
+    groups: Vec<bool>,
     is_near: Vec<bool>,
     /// Groups next to those where something came back.
     near: Vec<u32>,
@@ -190,12 +193,13 @@ impl Marks {
         Self {
             rows: vec![false; index.slack.len()],
             any_ofs: vec![false; index.any_of_rows.len()],
+            groups: vec![false; index.groups() as usize],
             is_near: vec![false; index.groups() as usize],
             near: Vec::new(),
         }
     }
 
-    /// Takes back what was ruled out and may depend on `var` having been: it, and then whatever was
+    /// Takes back what was ruled out and may depend on these having been: they, and then whatever was
     /// ruled out later next to a group where something came back. Constraints of such groups ask for
     /// what they asked for at first. Returns those groups.
     pub(super) fn restore(
@@ -203,33 +207,31 @@ impl Marks {
         index: &Index,
         live: &mut Live,
         before: &Live,
-        var: u32,
+        vars: &[u32],
         budget: &mut Budget<'_>,
     ) -> Vec<u32> {
-        let mut seeds = vec![index.group_of[var as usize]];
-        let mut queue = vec![(var, before.ruled_at[var as usize])];
-        live.restore(index, var);
-        while let Some((var, since)) = queue.pop() {
+        let mut seeds: Vec<u32> = vars.iter().map(|&var| index.group_of[var as usize]).collect();
+        let start = vars.iter().map(|&var| Reverse((before.ruled_at[var as usize], var)));
+        let mut queue: BinaryHeap<_> = start.collect();
+        for &var in vars {
+            live.restore(index, var);
+        }
+        // Earliest first: a group needs to be looked at but once.
+        while let Some(Reverse((since, var))) = queue.pop() {
             let group = index.group_of[var as usize];
-            let mut touched = self.neighbours(index, live, group);
-            touched.extend(index.vars(group));
-            touched.sort_unstable();
-            touched.dedup();
-            budget.spend(touched.len());
-            for &other in &touched {
-                let near = index.group_of[other as usize];
+            if std::mem::replace(&mut self.groups[group as usize], true) {
+                continue;
+            }
+            let near = self.neighbours(index, live, before, group, since);
+            budget.spend(near.len());
+            for near in near {
                 if !std::mem::replace(&mut self.is_near[near as usize], true) {
                     self.near.push(near);
                 }
                 for mate in index.vars(near) {
-                    let depends = mate == other || before.stand_in[mate as usize] == other;
                     let ruled_at = before.ruled_at[mate as usize];
-                    if depends
-                        && ruled_at > since
-                        && ruled_at != u32::MAX
-                        && live.restore(index, mate)
-                    {
-                        queue.push((mate, ruled_at));
+                    if ruled_at > since && ruled_at != u32::MAX && live.restore(index, mate) {
+                        queue.push(Reverse((ruled_at, mate)));
                         seeds.push(near);
                     }
                 }
@@ -240,22 +242,41 @@ impl Marks {
         seeds
     }
 
-    /// The variables that share a constraint with some candidate of a group; its rows and any-ofs,
-    /// and those tied to them by any-ofs, ask again for what they asked for at first.
-    fn neighbours(&mut self, index: &Index, live: &mut Live, group: u32) -> Vec<u32> {
-        let mut found = Vec::new();
+    /// The groups that share a constraint with a group, and itself; a constraint that was dropped, or
+    /// a candidate that was ruled out, before `since` does not count. The rows and any-ofs, and those
+    /// tied to them by any-ofs, ask again for what they asked for at first.
+    fn neighbours(
+        &mut self,
+        index: &Index,
+        live: &mut Live,
+        before: &Live,
+        group: u32,
+        since: u32,
+    ) -> Vec<u32> {
+        let still = |at: u32| at > since || at == u32::MAX;
+        let mut found = vec![group];
         let mut rows = Vec::new();
+        let mut add = |other: u32| {
+            if still(before.ruled_at[other as usize]) {
+                let near = index.group_of[other as usize];
+                if found.last() != Some(&near) {
+                    found.push(near);
+                }
+            }
+        };
         for var in index.vars(group) {
-            found.extend_from_slice(&index.hard[var]);
-            found.extend(index.soft[var].iter().map(|&(other, _)| other));
+            index.hard[var].iter().for_each(|&other| add(other));
+            index.soft[var].iter().for_each(|&(other, _)| add(other));
             rows.extend(index.var_terms[var].iter().map(|&(row, _)| row));
         }
+        let asked = |row: &u32| still(before.dropped_at[*row as usize]);
         rows.sort_unstable();
         rows.dedup();
+        rows.retain(asked);
         let mut next = 0;
         while let Some(&row) = rows.get(next) {
             next += 1;
-            found.extend(index.row_terms[row].iter().map(|&(var, _)| var));
+            index.row_terms[row].iter().for_each(|&(other, _)| add(other));
             self.rows[row as usize] = true;
             let firm = row < index.firm_rows;
             live.rows[row as usize] = if firm { Demand::Firm } else { Demand::Alternative };
@@ -267,6 +288,8 @@ impl Marks {
                 }
             }
         }
+        found.sort_unstable();
+        found.dedup();
         found
     }
 }

@@ -74,8 +74,11 @@ fn start<'i>(
 ) -> State<'i> {
     let further: Vec<u32> = (before.firm_rows..index.firm_rows).collect();
     let mut best = State::of_vars(index, found.chosen.clone());
-    if improve::hold(&mut best, &further, budget) {
+    if improve::hold(&mut best, &further, budget) && best.objective() < found.bound {
         improve::climb(&mut best, budget);
+    }
+    if best.is_feasible() && best.objective() >= found.bound {
+        return best;
     }
     let given = options.start.as_ref().and_then(|start| State::new(index, start));
     if let Some(mut given) = given
@@ -105,14 +108,16 @@ fn reopened(
         let terms = &index.var_terms[var];
         terms.binary_search_by_key(&row, |term| term.0).map_or(0, |position| terms[position].1)
     };
-    for var in 0..index.value.len() as u32 {
+    let asked_for = |&var: &u32| {
         let mate = found.live.stand_in(var);
-        let asked = mate != var && further.clone().any(|row| delta(mate, row) > delta(var, row));
-        if asked && found.live.spare(var) <= most && !live.vars[var as usize] {
-            marks.restore(before, &mut live, &found.live, var, budget);
-        }
-    }
+        mate != var
+            && found.live.spare(var) <= most
+            && further.clone().any(|row| delta(mate, row) > delta(var, row))
+    };
+    let asked_for: Vec<u32> = (0..index.value.len() as u32).filter(asked_for).collect();
+    marks.restore(before, &mut live, &found.live, &asked_for, budget);
     let firm = before.firm_rows as usize;
-    live.rows.splice(firm..firm, further.map(|_| Demand::Firm));
+    live.rows.splice(firm..firm, further.clone().map(|_| Demand::Firm));
+    live.dropped_at.splice(firm..firm, further.map(|_| u32::MAX));
     live
 }

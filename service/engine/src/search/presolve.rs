@@ -25,6 +25,8 @@ pub(super) struct Live {
     spare: Vec<i64>,
     /// When each candidate was ruled out, counted; the greatest number there is while it is not.
     pub(super) ruled_at: Vec<u32>,
+    /// How many candidates had been ruled out when a row was found not to be asked for any more.
+    pub(super) dropped_at: Vec<u32>,
     ruled: u32,
     /// Nothing is feasible.
     pub(super) infeasible: bool,
@@ -62,6 +64,7 @@ impl Live {
             stand_in: (0..index.value.len() as u32).collect(),
             spare: vec![0; index.value.len()],
             ruled_at: vec![u32::MAX; index.value.len()],
+            dropped_at: vec![u32::MAX; index.slack.len()],
             ruled: 0,
             infeasible: false,
         };
@@ -159,6 +162,11 @@ impl Live {
         (least, greatest)
     }
 
+    fn drop_row(&mut self, row: u32, why: Demand) {
+        self.rows[row as usize] = why;
+        self.dropped_at[row as usize] = self.ruled;
+    }
+
     /// Drops rows that can't be broken and rules out candidates that no row admits.
     fn bound_rows(&mut self, index: &Index, budget: &mut Budget<'_>) -> bool {
         let mut changed = false;
@@ -177,11 +185,11 @@ impl Live {
                 greatest += range.1;
             }
             if greatest <= slack {
-                self.rows[row as usize] = Demand::Holds;
+                self.drop_row(row, Demand::Holds);
                 changed = true;
             } else if least > slack {
                 self.infeasible |= demand == Demand::Firm;
-                self.rows[row as usize] = Demand::Fails;
+                self.drop_row(row, Demand::Fails);
                 changed = true;
             } else if demand == Demand::Firm {
                 changed |= self.exclude_by_row(index, terms, slack - least);
@@ -242,7 +250,7 @@ impl Live {
         for row in index.firm_rows..index.slack.len() as u32 {
             let needed = index.row_any_ofs[row].iter().any(|&any_of| self.any_ofs[any_of as usize]);
             if self.rows[row as usize] == Demand::Alternative && !needed {
-                self.rows[row as usize] = Demand::Holds;
+                self.drop_row(row, Demand::Holds);
             }
         }
     }
