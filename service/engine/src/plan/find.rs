@@ -7,7 +7,7 @@ use super::problem::Problem;
 use crate::answer::{Plans, Reason, Stopped};
 use crate::audit::{AuditReport, PlanUnderAudit, audit};
 use crate::day::HandDecision;
-use crate::search::{self, Index, RankOptions, SolveOptions, State, choice, rank};
+use crate::search::{self, Index, RankOptions, Search, SolveOptions, State, choice};
 use crate::traffic::Traffic;
 
 /// Most findings against one plan that are logged: a mistake shows in the first few.
@@ -145,7 +145,8 @@ pub fn find(
         },
     };
     let search_watch = search::Watch { stop: &stop, progress: &progress };
-    let solutions = rank(&problem.model, &rank_options, search_watch).map_err(PlanError::Model)?;
+    let mut search = Search::new(&problem.model).map_err(PlanError::Model)?;
+    let solutions = search.rank_maximal(&rank_options, search_watch).map_err(PlanError::Model)?;
     tracing::debug!("searched");
     if solutions.first().is_none_or(|best| !best.violations.is_empty()) {
         // All else holds where nothing is flown but what was decided by hand, which was tried.

@@ -252,3 +252,17 @@ fn the_number_of_moved_flights_can_be_limited() {
         Constraint::PlanLimit { key: "max_moved_flights", .. }
     ));
 }
+
+/// Four independent grants: only one maximal plan exists, and nothing else is handed out.
+#[test]
+fn more_plans_than_maximal_ones_exist_are_not_made_up() {
+    let flights: Vec<_> =
+        (0..4u8).map(|i| eastbound(&format!("F{i}"), 0.0, f64::from(i))).collect();
+    let ask = |i: u8| {
+        let km = 10.0 + f64::from(i);
+        proposal(&format!("p{i}"), &format!("F{i}"), vec![option(1, 370.0, 1000.0, 3000.0, km)])
+    };
+    let parts = DayParts { flights, proposals: (0..4).map(ask).collect(), ..empty_parts() };
+    let (_, plans) = find_on(parts, &FindOptions { plans: 5, ..FindOptions::default() });
+    assert_eq!(plans.plans.len(), 1);
+}

@@ -23,6 +23,7 @@ mod further;
 mod greedy;
 mod improve;
 mod index;
+mod maximal;
 pub mod model;
 #[cfg(test)]
 mod oracle;

@@ -94,7 +94,7 @@ pub(super) fn enumerate(model: &Model) -> Vec<(i64, Vec<u32>)> {
     found
 }
 
-fn is_maximal(model: &Model, choices: &[u32]) -> bool {
+pub(super) fn is_maximal(model: &Model, choices: &[u32]) -> bool {
     let objective = model.objective(choices);
     (0..choices.len()).all(|group| {
         (0..model.groups[group].candidates.len() as u32).all(|candidate| {
