@@ -1,7 +1,7 @@
 //! What can be asked on the command line.
 
 use crate::commands::{
-    ask, audit, check, compare, completions, demo, export, new, plan, policy, serve,
+    ask, audit, check, compare, completions, demo, export, new, plan, policy, serve, why,
 };
 use crate::report::cautions;
 use crate::tables::time::parse_utc;
@@ -44,6 +44,8 @@ pub(crate) enum Command {
     Ask(ask::AskArgs),
     /// Find the best set of proposals that can be granted together.
     Plan(plan::PlanArgs),
+    /// Tell why a plan leaves a proposal out, and what it would take to let it in.
+    Why(why::WhyArgs),
     /// Write the search's model of a day as free MPS, for other solvers.
     Export(export::ExportArgs),
     /// Judge a plan by code that shares none of the search's shortcuts.

@@ -282,7 +282,7 @@ fn wire(time: Option<&str>) -> Result<Option<prost_types::Timestamp>, String> {
 }
 
 impl ReasonDocument {
-    fn of_reason(reason: &Reason) -> ReasonDocument {
+    pub(crate) fn of_reason(reason: &Reason) -> ReasonDocument {
         let constraint = reason.constraint.clone().unwrap_or_default();
         ReasonDocument { option: Some(reason.option), ..ReasonDocument::of(&constraint) }
     }

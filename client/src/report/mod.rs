@@ -15,3 +15,4 @@ pub(crate) mod policy;
 mod sheet;
 #[cfg(test)]
 mod tests;
+pub(crate) mod why;

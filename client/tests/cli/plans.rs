@@ -234,3 +234,43 @@ fn a_new_day_folder_passes_the_check_and_can_be_planned() {
     let again = run(&["new", arg(&folder)]);
     assert_eq!(again.code, Some(2), "{}", again.out);
 }
+
+#[test]
+fn a_refusal_is_explained() {
+    // AAA1 and DDD4, a mile and a half apart and both at another level now, want the same one.
+    let day = day_with(
+        "=== flights.csv
+flight,departure,destination,aircraft
+AAA1,XAAA,XBBB,MJET
+BBB2,XAAA,XBBB,MJET
+=== points.csv
+flight,time,lon,lat,level_fl
+AAA1,2031-03-04T06:00:00Z,8,50,360
+AAA1,2031-03-04T07:00:00Z,-4,50,360
+BBB2,2031-03-04T06:00:00Z,8,50.02,320
+BBB2,2031-03-04T07:00:00Z,-4,50.02,320
+=== proposals.csv
+proposal,flight,level_fl,from_time,until_time,contrail_km_avoided,extra_fuel_kg
+P1,AAA1,340,2031-03-04T06:10:00Z,2031-03-04T06:50:00Z,100,0
+P2,BBB2,340,2031-03-04T06:10:00Z,2031-03-04T06:50:00Z,60,0
+",
+    );
+    let within = tempfile::tempdir().expect("a folder");
+    let plan = within.path().join("plan");
+    let (folder, out) = (arg(day.path()), arg(&plan));
+    assert_eq!(run(&["plan", folder, "--out", out]).code, Some(0));
+    let why = run(&["why", folder, out, "--proposal", "P2", "--json"]);
+    assert_eq!(why.code, Some(0), "{}", why.err);
+    let value: serde_json::Value = serde_json::from_str(&why.out).expect("JSON");
+    // 40 km less, at 9e8 J a metre, times the ratio of 0.42.
+    let lost = value["objective_lost_j"].as_f64().expect("a number");
+    assert!((lost / (40_000.0 * 9e8 * 0.42) - 1.0).abs() < 1e-9, "{lost}");
+    assert_eq!(value["least_objective_lost_j"], value["objective_lost_j"]);
+    assert_eq!(value["drops"], serde_json::json!(["P1"]));
+    assert_eq!(value["reasons"][0]["kind"], "separation");
+    let text = run(&["why", folder, out, "--proposal", "P2"]);
+    assert!(text.out.contains("proven to be the least"), "{}", text.out);
+    let unknown = run(&["why", folder, out, "--proposal", "P9"]);
+    assert_eq!(unknown.code, Some(2), "{}", unknown.err);
+    assert!(unknown.err.contains("--proposal"), "{}", unknown.err);
+}

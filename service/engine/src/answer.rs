@@ -455,3 +455,23 @@ pub struct Unchangeable {
     /// Without a cruise leg.
     pub no_cruise: u32,
 }
+
+/// Why a plan leaves a proposal out, and what it would take to let it in.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct Why {
+    /// Whether the plan grants it, with one of its options.
+    pub granted: bool,
+    /// What keeps each option out that is not taken, when it alone is added.
+    pub reasons: Vec<Reason>,
+    /// Limits that would let the option as asked in, each raised by one; empty where something else
+    /// is in the way, or one would not do.
+    pub relax: Vec<Constraint>,
+    /// By how much the objective falls in the best plan found that grants it; `None`: no plan does.
+    pub loss: Option<f64>,
+    /// Proven: it falls at least by this.
+    pub least_loss: Option<f64>,
+    /// Proposals granted here that this best plan does not grant.
+    pub goes: Vec<ProposalId>,
+    /// Proposals that it grants instead, this one among them.
+    pub comes: Vec<ProposalId>,
+}

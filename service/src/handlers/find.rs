@@ -221,6 +221,11 @@ pub(super) fn failure(ready: &Ready, error: PlanError) -> ServiceError {
                       search more time"
                 .to_owned(),
         },
+        PlanError::NotAPlan => ServiceError::Precondition {
+            subject: "the plan".to_owned(),
+            problem: "its grants are none of this day's options, or can't be flown together"
+                .to_owned(),
+        },
         PlanError::Cancelled => ServiceError::Cancelled,
         defect @ (PlanError::FailedAudit(_) | PlanError::Model(_)) => {
             tracing::error!(?defect, "the search failed");

@@ -2,6 +2,7 @@
 
 mod ask;
 mod day;
+mod explain;
 mod export;
 mod find;
 mod paging;

@@ -164,6 +164,16 @@ impl PlanService for Api {
         Ok(Response::new(self.compute.run(Work::Job, None, audited).await?))
     }
 
+    #[tracing::instrument(skip_all)]
+    async fn explain_refusal(
+        &self,
+        request: Request<v1::ExplainRefusalRequest>,
+    ) -> Result<Response<v1::ExplainRefusalResponse>, Status> {
+        let deadline = deadline::of_call(request.metadata());
+        let answer = self.explained(request.into_inner(), deadline).await?;
+        Ok(Response::new(answer))
+    }
+
     async fn get_plan(
         &self,
         request: Request<v1::GetPlanRequest>,
@@ -202,7 +212,7 @@ impl PlanService for Api {
 
 impl Api {
     /// A kept plan and its day.
-    fn plan(&self, name: &str) -> Result<(Arc<LoadedDay>, Arc<KeptPlan>), ServiceError> {
+    pub(super) fn plan(&self, name: &str) -> Result<(Arc<LoadedDay>, Arc<KeptPlan>), ServiceError> {
         let name = PlanName::parse("name", name)?;
         let day = self.days.get(&name.day)?;
         let plan = day.plans.get(&name)?;

@@ -5,7 +5,7 @@ use prost_types::Timestamp;
 use rimeshift_engine::answer::{
     AskAnswer, AskVerdict, Constraint, DayCheck, Decision, Exchange, LoadCount, LoadMeasure, Loss,
     LossIn, MovedProfile, Overload, Place, PlanLoss, PlannedStretch, Reason, Rule, Stopped,
-    Verdict,
+    Verdict, Why,
 };
 use rimeshift_engine::day::Day;
 use rimeshift_engine::ids::{FlightId, ProposalId, RestrictionId, SectorId};
@@ -42,6 +42,19 @@ impl Answers<'_> {
 
     pub(super) fn sector(&self, id: SectorId) -> String {
         self.day.sectors.get(id).map_or_else(String::new, |sector| sector.name.clone())
+    }
+
+    pub(crate) fn why(&self, why: &Why) -> v1::ExplainRefusalResponse {
+        let names = |ids: &[ProposalId]| ids.iter().map(|&id| self.proposal(id)).collect();
+        v1::ExplainRefusalResponse {
+            granted: why.granted,
+            reasons: why.reasons.iter().map(|reason| self.reason(reason)).collect(),
+            relax: why.relax.iter().map(|limit| self.constraint(limit)).collect(),
+            objective_lost: why.loss,
+            least_objective_lost: why.least_loss,
+            drops: names(&why.goes),
+            adds: names(&why.comes),
+        }
     }
 
     fn restriction(&self, id: RestrictionId) -> String {

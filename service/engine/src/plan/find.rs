@@ -111,6 +111,9 @@ pub enum PlanError {
     /// No plan grants every operator the policy's `min_grant_rate_per_operator`.
     #[error("no plan was found that grants every operator its least share")]
     GrantRate,
+    /// The plan given is none of this day: its grants are not, or can't be flown together.
+    #[error("the plan is none of this day")]
+    NotAPlan,
     /// The caller has gone before there was a plan.
     #[error("the caller has gone")]
     Cancelled,

@@ -22,6 +22,7 @@ mod tests;
 mod tests_apart;
 #[cfg(test)]
 mod tests_rules;
+mod why;
 
 pub use by_hand::Unmet;
 pub(crate) use decide::planned_stretches;
@@ -30,3 +31,4 @@ pub use find::{FindOptions, PlanError, Progress, Watch, find};
 pub use options::TooManyCombinations;
 pub(crate) use options::sort_by_start;
 pub use state::{Moved, PlanState};
+pub use why::why;
