@@ -366,6 +366,63 @@ pub struct Plans {
     pub stopped: Stopped,
     /// Decisions by hand that can't be met and were planned around.
     pub unmet: Vec<HandDecision>,
+    /// What the limits that bind cost the best plan, dearest first.
+    pub limit_prices: Vec<LimitPrice>,
+}
+
+/// What one more in a window or at a minute, or one more of what a key of the policy limits, would
+/// gain.
+#[derive(Debug, Clone, PartialEq)]
+pub struct LimitPrice {
+    /// Where; `None` where the policy sets the limit.
+    pub place: Option<Place>,
+    /// The key of the policy that sets the limit.
+    pub policy_key: Option<&'static str>,
+    /// What is counted there.
+    pub measure: Option<LoadMeasure>,
+    /// Start of the window, or the minute, seconds of the day.
+    pub from_s: f64,
+    /// Its end, seconds of the day.
+    pub until_s: f64,
+    /// The gain, about, in the unit of the objective: the price behind the bound.
+    pub estimate: f64,
+    /// The gain, found by searching again with the limit raised by one.
+    pub exact: Option<f64>,
+}
+
+/// What plans buy for how much of something.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct TradeOff {
+    /// The best plan, then those under ever smaller limits.
+    pub points: Vec<TradeOffPoint>,
+}
+
+/// The best plan found under a limit.
+#[derive(Debug, Clone, PartialEq)]
+pub struct TradeOffPoint {
+    /// The limit.
+    pub limit: TradeOffLimit,
+    /// Flights moved.
+    pub moved_flights: u32,
+    /// Contrail kilometres avoided.
+    pub contrail_km_avoided: f64,
+    /// Extra fuel, kg.
+    pub extra_fuel_kg: f64,
+    /// Sum of the net benefits.
+    pub objective: f64,
+    /// No plan under this limit is worth more: proven.
+    pub bound: Option<f64>,
+}
+
+/// What is limited at a point of a trade-off.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum TradeOffLimit {
+    /// Nothing beyond the day's own rules.
+    None,
+    /// At most so many flights are moved.
+    MovedFlights(u32),
+    /// At most so much extra fuel, kg.
+    ExtraFuelKg(f64),
 }
 
 impl Plans {

@@ -2,6 +2,7 @@
 
 use super::by_hand::{self, Unmet};
 use super::decide::plan_of;
+use super::limit_prices::limit_prices;
 use super::options::TooManyCombinations;
 use super::problem::Problem;
 use crate::answer::{Plans, Reason, Stopped};
@@ -28,6 +29,8 @@ pub struct FindOptions {
     pub decisions: Vec<HandDecision>,
     /// What to do about those that can't be met.
     pub unmet: Unmet,
+    /// For how many of the dearest limits to find exactly what one more would gain.
+    pub exact_limits: usize,
 }
 
 impl Default for FindOptions {
@@ -40,6 +43,7 @@ impl Default for FindOptions {
             gap: solve.gap,
             decisions: Vec::new(),
             unmet: Unmet::Refuse,
+            exact_limits: 0,
         }
     }
 }
@@ -182,7 +186,11 @@ pub fn find(
         Some(search::Stopped::Asked) => (watch.stop)().unwrap_or(Stopped::Cancelled),
         Some(search::Stopped::Work | search::Stopped::Infeasible) | None => Stopped::Work,
     };
-    Ok(Plans { plans, bound, stopped, unmet })
+    let limit_prices = match best {
+        Some(best) => limit_prices(traffic, &problem, best, options, watch)?,
+        None => Vec::new(),
+    };
+    Ok(Plans { plans, bound, stopped, unmet, limit_prices })
 }
 
 /// The problem that is searched, and the decisions by hand that it leaves out.

@@ -10,6 +10,7 @@ mod by_hand;
 mod decide;
 mod export;
 mod find;
+mod limit_prices;
 mod operators;
 mod options;
 mod problem;
@@ -22,6 +23,7 @@ mod tests;
 mod tests_apart;
 #[cfg(test)]
 mod tests_rules;
+mod trade_off;
 mod why;
 
 pub use by_hand::Unmet;
@@ -31,4 +33,5 @@ pub use find::{FindOptions, PlanError, Progress, Watch, find};
 pub use options::TooManyCombinations;
 pub(crate) use options::sort_by_start;
 pub use state::{Moved, PlanState};
+pub use trade_off::trade_off;
 pub use why::why;

@@ -275,3 +275,53 @@ fn every_operator_gets_its_least() {
     let impossible = find(&traffic, &FindOptions::default(), Watch::unattended());
     assert_eq!(impossible, Err(PlanError::GrantRate));
 }
+
+/// A window for two of three: the third is what one more would gain.
+#[test]
+fn what_a_limit_costs_is_what_one_more_would_gain() {
+    let limits = CapacityParts { entries_per_hour: Some(1.0), ..CapacityParts::default() };
+    let high = sector("HIGH", 360.0, 400.0, limits);
+    let ask = |name: &str, flight: &str, km: f64| {
+        proposal(name, flight, vec![option(1, 370.0, 1000.0, 3000.0, km)])
+    };
+    let parts = DayParts {
+        sectors: vec![high.0],
+        capacities: vec![high.1],
+        flights: vec![eastbound("A", 0.0, 0.0), eastbound("B", 0.0, 1.0), eastbound("C", 0.0, 2.0)],
+        proposals: vec![ask("p1", "A", 50.0), ask("p2", "B", 40.0), ask("p3", "C", 30.0)],
+        ..empty_parts()
+    };
+    let options = FindOptions { exact_limits: 5, ..FindOptions::default() };
+    let (_, plans) = find_on(parts.clone(), &options);
+    let per_km = 1000.0 * 9e8 * 0.42;
+    assert!((plans.plans[0].objective / (50.0 * per_km) - 1.0).abs() < 1e-9);
+    // Several windows hold the same entries; raising one of them alone gains nothing, and no price
+    // is more than what the second flight is worth.
+    assert!(!plans.limit_prices.is_empty());
+    for price in &plans.limit_prices {
+        assert!(price.estimate > 0.0 && price.estimate <= 40.0 * per_km * (1.0 + 1e-9));
+        assert_eq!(price.exact, Some(0.0));
+    }
+    // Windows that do not overlap: one holds them all, and one more is worth the second flight.
+    let mut apart = parts;
+    apart.policy.entry_step_min = 60.0;
+    let (_, plans) = find_on(apart, &options);
+    assert_eq!(plans.limit_prices.len(), 1);
+    let exact = plans.limit_prices[0].exact.unwrap();
+    assert!((exact / (40.0 * per_km) - 1.0).abs() < 1e-9);
+}
+
+#[test]
+fn a_trade_off_buys_the_dearest_first() {
+    let traffic = Traffic::new(Day::build(operators()).unwrap().day);
+    let options = FindOptions::default();
+    let curve = trade_off(&traffic, 4, &options, Watch::unattended()).unwrap();
+    let by_moved: Vec<(u32, f64)> = curve
+        .points
+        .iter()
+        .filter(|p| !matches!(p.limit, crate::answer::TradeOffLimit::ExtraFuelKg(_)))
+        .map(|p| (p.moved_flights, p.contrail_km_avoided))
+        .collect();
+    assert_eq!(by_moved, [(4, 125.0), (3, 120.0), (2, 90.0), (1, 50.0)]);
+    assert!(curve.points.iter().all(|p| p.bound == Some(p.objective)));
+}
