@@ -2,7 +2,7 @@
 //! came and whichever program sent them.
 //!
 //! The form: the tables of a built day in one fixed order, each sorted by name as the day keeps
-//! them, volumes of a sector by their own bytes; every text and list led by its length (u64,
+//! them, what has no unique name (volumes, restrictions) by its own digest; every text and list led by its length (u64,
 //! little-endian), every number as an IEEE 754 double (little-endian, -0 as 0), every optional
 //! value led by a byte 0 or 1. The policy belongs to it, key by key, so a default given outright
 //! changes nothing.
@@ -10,12 +10,13 @@
 use std::fmt::Write as _;
 
 use rimeshift_engine::day::{
-    Day, Flight, FuelFlow, FuelTable, KEYS, Period, PolicyValue, Proposal, Sector, Volume,
+    Background, Day, Flight, Flow, FuelFlow, FuelTable, HandDecision, HandSubject, KEYS, Must,
+    Period, PolicyValue, Proposal, Restriction, Sector, Volume,
 };
 use sha2::{Digest, Sha256};
 
 /// Names the form, so that a change of it changes every hash.
-const FORM: &str = "rimeshift day 1";
+const FORM: &str = "rimeshift day 2";
 
 /// SHA-256 of the day's canonical form, 64 lower-case hexadecimal digits.
 pub(crate) fn day_sha256(day: &Day) -> String {
@@ -44,6 +45,10 @@ pub(crate) fn day_sha256(day: &Day) -> String {
     form.fuel(&day.fuel);
     form.list(day.flights.as_slice(), Form::flight);
     form.list(day.proposals.as_slice(), |form, proposal| form.proposal(day, proposal));
+    form.unordered(day.restrictions.as_slice(), Form::restriction);
+    form.unordered(&day.background, |form, row| form.background(day, row));
+    form.unordered(&day.flows, |form, row| form.flow(day, row));
+    form.unordered(&day.decisions, |form, decision| form.decision(day, decision));
     let mut hex = String::with_capacity(64);
     for byte in form.0.finalize() {
         // Writing to a string can't fail.
@@ -92,6 +97,18 @@ impl Form {
         items.iter().for_each(|item| each(self, item));
     }
 
+    /// Items that nothing but their content puts in order.
+    fn unordered<T>(&mut self, items: &[T], each: impl Fn(&mut Self, &T)) {
+        let digest = |item| -> [u8; 32] {
+            let mut form = Form(Sha256::new());
+            each(&mut form, item);
+            form.0.finalize().into()
+        };
+        let mut digests: Vec<_> = items.iter().map(digest).collect();
+        digests.sort_unstable();
+        self.list(&digests, |form, digest| form.0.update(digest));
+    }
+
     fn policy_value(&mut self, value: &PolicyValue) {
         match value {
             PolicyValue::Unset => self.count(0),
@@ -125,10 +142,7 @@ impl Form {
         self.optional_text(sector.title.as_deref());
         self.optional(sector.horizontal_nm);
         self.flag(sector.no_changes);
-        // Volumes have no name to be sorted by.
-        let mut volumes: Vec<_> = sector.volumes.iter().map(volume_digest).collect();
-        volumes.sort_unstable();
-        self.list(&volumes, |form, digest| form.0.update(digest));
+        self.unordered(&sector.volumes, Form::volume);
         self.periods(&sector.open, |l| {
             vec![
                 l.entries_per_hour,
@@ -188,13 +202,51 @@ impl Form {
             form.number(alternative.priority);
         });
     }
-}
 
-fn volume_digest(volume: &Volume) -> [u8; 32] {
-    let mut form = Form(Sha256::new());
-    form.numbers(&[volume.floor_ft, volume.ceiling_ft]);
-    form.list(volume.polygon.rings(), |form, ring| {
-        form.list(ring, |form, position| form.numbers(position));
-    });
-    form.0.finalize().into()
+    fn volume(&mut self, volume: &Volume) {
+        self.numbers(&[volume.floor_ft, volume.ceiling_ft]);
+        self.list(volume.polygon.rings(), |form, ring| {
+            form.list(ring, |form, position| form.numbers(position));
+        });
+    }
+
+    fn restriction(&mut self, restriction: &Restriction) {
+        self.text(&restriction.name);
+        self.unordered(&restriction.volumes, Form::volume);
+        self.numbers(&[restriction.from_s, restriction.until_s]);
+        self.list(&restriction.levels_allowed_ft, |form, &level_ft| form.number(level_ft));
+        self.optional_text(restriction.departure.as_deref());
+        self.optional_text(restriction.destination.as_deref());
+    }
+
+    fn background(&mut self, day: &Day, row: &Background) {
+        self.text(day.sectors.get(row.sector).map_or("", |sector| &sector.name));
+        self.numbers(&[row.from_s, row.until_s, row.aircraft]);
+        self.optional(row.level_ft);
+        self.optional(row.entries);
+    }
+
+    fn flow(&mut self, day: &Day, row: &Flow) {
+        for (sector, level_ft) in [row.from, row.to] {
+            self.text(day.sectors.get(sector).map_or("", |sector| &sector.name));
+            self.number(level_ft);
+        }
+        self.numbers(&[row.from_s, row.until_s, row.aircraft]);
+    }
+
+    fn decision(&mut self, day: &Day, decision: &HandDecision) {
+        let (is_flight, name) = match decision.about {
+            HandSubject::Proposal(id) => (false, day.proposals.get(id).map(|p| &p.name)),
+            HandSubject::Flight(id) => (true, day.flights.get(id).map(|f| &f.name)),
+        };
+        self.flag(is_flight);
+        self.text(name.map_or("", String::as_str));
+        let (must, option) = match decision.must {
+            Must::Grant { option } => (1, option),
+            Must::Refuse => (2, None),
+            Must::Keep => (3, None),
+        };
+        self.count(must);
+        self.optional(option.map(f64::from));
+    }
 }

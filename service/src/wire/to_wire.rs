@@ -56,6 +56,10 @@ fn counts(day: &Day) -> v1::DayCounts {
         flights: count(day.flights.len()),
         points: count(day.flights.iter().map(|f| f.profile.points().len()).sum()),
         proposals: count(day.proposals.len()),
+        restrictions: count(day.restrictions.len()),
+        background: count(day.background.len()),
+        flows: count(day.flows.len()),
+        decisions: count(day.decisions.len()),
     }
 }
 

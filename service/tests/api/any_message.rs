@@ -46,6 +46,23 @@ prop_compose! {
 }
 
 prop_compose! {
+    fn hand_decision()(
+        name in name(),
+        about in 0..3,
+        must in -1..5_i32,
+        option in proptest::option::of(0..3_u32),
+    ) -> v1::HandDecision {
+        use v1::hand_decision::About;
+        let about = match about {
+            0 => None,
+            1 => Some(About::Flight(name)),
+            _ => Some(About::Proposal(name)),
+        };
+        v1::HandDecision { about, must, option }
+    }
+}
+
+prop_compose! {
     fn rows()(
         (names, numbers, times) in (
             prop::collection::vec(name(), 8),
@@ -54,6 +71,7 @@ prop_compose! {
         ),
         (points, more) in (proptest::option::of(points()), proptest::option::of(points())),
         option in 0..3_u32,
+        hand in hand_decision(),
     ) -> v1::DayRows {
         let [a, b, c, d, ..] = names.as_slice() else { unreachable!() };
         v1::DayRows {
@@ -89,6 +107,37 @@ prop_compose! {
                     figures: Some(v1::OptionFigures { priority: Some(numbers[6]), ..Default::default() }),
                 }],
             }],
+            restrictions: vec![v1::Restriction {
+                restriction: a.clone(),
+                volumes: vec![v1::Volume {
+                    rings: vec![v1::Ring { lon_deg: numbers[1..5].to_vec(), lat_deg: numbers[5..8].to_vec() }],
+                    floor_ft: numbers[9],
+                    ceiling_ft: numbers[8],
+                }],
+                from: times[4],
+                until: times[5],
+                levels_allowed_ft: numbers[9..].to_vec(),
+                departure: Some(b.clone()),
+                destination: None,
+            }],
+            background: vec![v1::Background {
+                sector: a.clone(),
+                from: times[0],
+                until: times[2],
+                aircraft: Some(numbers[7]),
+                level_ft: Some(numbers[8]),
+                entries: Some(numbers[9]),
+            }],
+            flows: vec![v1::Flow {
+                from_sector: a.clone(),
+                from_level_ft: Some(numbers[10]),
+                to_sector: b.clone(),
+                to_level_ft: Some(numbers[11]),
+                from: times[1],
+                until: times[3],
+                aircraft: Some(numbers[0]),
+            }],
+            decisions: vec![hand],
         }
     }
 }

@@ -8,4 +8,5 @@ mod plans;
 mod program;
 mod serving;
 mod support;
+mod tables;
 mod traffic;
