@@ -65,6 +65,10 @@ impl DayFolder {
             "fuel" => self.fuel.place(row, column.filter(|column| *column != "flow")),
             "flights" => self.locate_flight(row, rest),
             "proposals" => self.locate_proposal(row, rest),
+            "restrictions" => self.locate_restriction(row, rest),
+            "background" => self.background.place(row, column),
+            "flows" => self.flows.place(row, column),
+            "decisions" => self.decisions.place(row, column),
             _ => None,
         }
     }
@@ -72,15 +76,22 @@ impl DayFolder {
     fn locate_sector(&self, sector: usize, rest: &[Step<'_>]) -> Option<String> {
         match rest {
             [Step { field: "volumes", index }, inner @ ..] => {
-                let property = match inner.first()?.field {
-                    "floor_ft" => Some("floor_fl"),
-                    "ceiling_ft" => Some("ceiling_fl"),
-                    _ => None,
-                };
-                self.sectors.place(sector, index.unwrap_or(0), property)
+                self.sectors.place(sector, index.unwrap_or(0), level_of_volume(inner))
             }
             [Step { field, .. }, ..] => self.sectors.place(sector, 0, Some(column_of(field))),
             [] => self.sectors.place(sector, 0, None),
+        }
+    }
+
+    fn locate_restriction(&self, restriction: usize, rest: &[Step<'_>]) -> Option<String> {
+        match rest {
+            [Step { field: "volumes", .. }, inner @ ..] => {
+                self.restrictions.place(restriction, level_of_volume(inner))
+            }
+            [Step { field, .. }, ..] => {
+                self.restrictions.place(restriction, Some(column_of(field)))
+            }
+            [] => self.restrictions.place(restriction, None),
         }
     }
 
@@ -129,12 +140,24 @@ impl DayFolder {
     }
 }
 
+/// The property in which a field of a volume stands, if it has one of its own.
+fn level_of_volume(rest: &[Step<'_>]) -> Option<&'static str> {
+    match rest.first()?.field {
+        "floor_ft" => Some("floor_fl"),
+        "ceiling_ft" => Some("ceiling_fl"),
+        _ => None,
+    }
+}
+
 /// The column in which a field of the wire stands.
 fn column_of(field: &str) -> &str {
     match field {
         "lon_deg" => "lon",
         "lat_deg" => "lat",
         "level_ft" => "level_fl",
+        "from_level_ft" => "from_level_fl",
+        "to_level_ft" => "to_level_fl",
+        "levels_allowed_ft" => "levels_allowed",
         "ceiling_ft" => "ceiling_fl",
         "floor_ft" => "floor_fl",
         "title" => "name",

@@ -1,6 +1,6 @@
 //! Reads a day folder into the rows that are sent to the service.
 //!
-//! What: `day.toml`, sectors as GeoJSON, and tables as CSV or Parquet, into the messages of
+//! What: `day.toml`, sectors and restrictions as GeoJSON, and tables as CSV or Parquet, into the messages of
 //! `rimeshift.v1`, with the line of every row kept beside it.
 //!
 //! How: each file is read to its end whatever is wrong in it, and every defect is collected with
@@ -13,10 +13,14 @@
 mod aircraft;
 mod airports;
 mod capacity;
+mod counted;
 mod day_toml;
+mod decisions;
+mod features;
 mod flights;
 mod locate;
 mod proposals;
+mod restrictions;
 mod sectors;
 mod send;
 #[cfg(test)]
@@ -33,11 +37,18 @@ use jiff::Timestamp;
 use jiff::civil::Date;
 use jiff::tz::Offset;
 use proposals::Proposals;
-use rimeshift_proto::v1::{AircraftClass, Airport, AirportCapacity, Capacity, Flight, FuelRow};
+use restrictions::Restrictions;
+use rimeshift_proto::v1::{
+    AircraftClass, Airport, AirportCapacity, Background, Capacity, Flight, Flow, FuelRow,
+    HandDecision,
+};
 use sectors::Sectors;
 use std::fs;
 use std::io;
 use std::path::Path;
+
+/// The tables that are GeoJSON.
+const FEATURES: [&str; 2] = ["sectors", "restrictions"];
 
 /// A day folder, read.
 #[derive(Debug)]
@@ -54,6 +65,10 @@ pub(crate) struct DayFolder {
     flights: Rows<Flight>,
     point_lines: PointLines,
     proposals: Proposals,
+    restrictions: Restrictions,
+    background: Rows<Background>,
+    flows: Rows<Flow>,
+    decisions: Rows<HandDecision>,
 }
 
 /// What a folder is read with.
@@ -83,8 +98,8 @@ pub(crate) fn read(
     let tables = Tables { folder, day: &day };
     let found = &mut findings;
     let sectors = {
-        let shown = day.files.get("sectors").map_or("sectors.geojson", String::as_str);
-        sectors::read(&folder.join(shown), shown, found)
+        let shown = tables.name_of_features("sectors");
+        sectors::read(&folder.join(&shown), &shown, found)
     };
     let capacities = capacity::read_sectors(tables.required("capacity", found), found);
     let airports = airports::read(tables.find("airports", found), found);
@@ -102,6 +117,13 @@ pub(crate) fn read(
         None => tables.find("proposals", found),
     };
     let proposals = proposals::read(proposals, found);
+    let restrictions = match tables.find_features("restrictions") {
+        Some(shown) => restrictions::read(&folder.join(&shown), &shown, found),
+        None => Restrictions::default(),
+    };
+    let background = counted::read_background(tables.find("background", found), found);
+    let flows = counted::read_flows(tables.find("flows", found), found);
+    let decisions = decisions::read(tables.find("decisions", found), found);
     warn_of_files(&names, &day, found);
     if !findings.defects.is_empty() {
         return Err(findings);
@@ -118,6 +140,10 @@ pub(crate) fn read(
         flights,
         point_lines,
         proposals,
+        restrictions,
+        background,
+        flows,
+        decisions,
     };
     Ok((folder, findings.warnings))
 }
@@ -154,6 +180,18 @@ impl Tables<'_> {
         table_file::find(self.folder, table, named, &mut findings.defects)
     }
 
+    /// The name of a file of features.
+    fn name_of_features(&self, table: &str) -> String {
+        self.day.files.get(table).cloned().unwrap_or_else(|| format!("{table}.geojson"))
+    }
+
+    /// The same where `[files]` names it or the folder holds it.
+    fn find_features(&self, table: &str) -> Option<String> {
+        let shown = self.name_of_features(table);
+        let there = || fs::symlink_metadata(self.folder.join(&shown)).is_ok();
+        (self.day.files.contains_key(table) || there()).then_some(shown)
+    }
+
     fn required(&self, table: &str, findings: &mut Findings) -> Option<TableFile> {
         let before = findings.defects.count();
         let found = self.find(table, findings);
@@ -188,19 +226,23 @@ fn names_in(folder: &Path) -> Vec<String> {
     names
 }
 
-/// Warns of tables that this version does not use, and of files whose name is nearly a table's.
+/// Warns of a table that this version does not use, of files whose name is nearly a table's, and of
+/// GeoJSON under another ending.
 fn warn_of_files(names: &[String], day: &DayToml, findings: &mut Findings) {
-    const NOT_USED_YET: [&str; 5] = ["weather", "restrictions", "background", "flows", "decisions"];
-    for name in names {
+    for name in names.iter().filter(|name| !day.files.values().any(|file| file == *name)) {
         let stem = name.split('.').next().unwrap_or_default();
-        let renamed = |table: &str| day.files.get(table) == Some(name);
-        if NOT_USED_YET.iter().any(|table| *table == stem || renamed(table)) {
-            findings.warnings.push(format!("{name}: this version does not use it yet"));
+        let warning = if stem == "weather" {
+            "this version does not use it yet".to_owned()
+        } else if FEATURES.contains(&stem) && *name != format!("{stem}.geojson") {
+            format!("is not read; was {stem}.geojson meant?")
         } else if !day_toml::TABLES.contains(&stem)
             && stem != "day"
             && let Some(near) = nearest(stem, day_toml::TABLES)
         {
-            findings.warnings.push(format!("{name}: is not read; was {near} meant?"));
-        }
+            format!("is not read; was {near} meant?")
+        } else {
+            continue;
+        };
+        findings.warnings.push(format!("{name}: {warning}"));
     }
 }

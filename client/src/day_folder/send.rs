@@ -5,8 +5,9 @@ use super::DayFolder;
 use prost::Message;
 use rimeshift_proto::v1::load_day_request::Content;
 use rimeshift_proto::v1::{
-    AircraftClass, Airport, AirportCapacity, Capacity, Date, DayRows, Flight, FlightPoints,
-    FuelRow, LoadDayHeader, LoadDayRequest, Points, Proposal, Sector,
+    AircraftClass, Airport, AirportCapacity, Background, Capacity, Date, DayRows, Flight,
+    FlightPoints, Flow, FuelRow, HandDecision, LoadDayHeader, LoadDayRequest, Points, Proposal,
+    Restriction, Sector,
 };
 
 /// The size at which a message is full, in bytes.
@@ -46,6 +47,10 @@ impl DayFolder {
         let fuel = self.fuel.rows.iter().map(SentRow::Fuel);
         let flights = self.flights.rows.iter().flat_map(pieces);
         let proposals = self.proposals.rows.iter().map(SentRow::Proposal);
+        let restrictions = self.restrictions.rows.iter().map(SentRow::Restriction);
+        let background = self.background.rows.iter().map(SentRow::Background);
+        let flows = self.flows.rows.iter().map(SentRow::Flow);
+        let decisions = self.decisions.rows.iter().map(SentRow::Decision);
         sectors
             .chain(capacities)
             .chain(airports)
@@ -54,6 +59,10 @@ impl DayFolder {
             .chain(fuel)
             .chain(flights)
             .chain(proposals)
+            .chain(restrictions)
+            .chain(background)
+            .chain(flows)
+            .chain(decisions)
     }
 }
 
@@ -72,6 +81,10 @@ enum SentRow<'a> {
     /// Further points of such a flight.
     Points(FlightPoints),
     Proposal(&'a Proposal),
+    Restriction(&'a Restriction),
+    Background(&'a Background),
+    Flow(&'a Flow),
+    Decision(&'a HandDecision),
 }
 
 impl SentRow<'_> {
@@ -87,6 +100,10 @@ impl SentRow<'_> {
             SentRow::LongFlight(row) => row.encoded_len(),
             SentRow::Points(row) => row.encoded_len(),
             SentRow::Proposal(row) => row.encoded_len(),
+            SentRow::Restriction(row) => row.encoded_len(),
+            SentRow::Background(row) => row.encoded_len(),
+            SentRow::Flow(row) => row.encoded_len(),
+            SentRow::Decision(row) => row.encoded_len(),
         }
     }
 
@@ -102,6 +119,10 @@ impl SentRow<'_> {
             SentRow::LongFlight(row) => message.flights.push(*row),
             SentRow::Points(row) => message.flight_points.push(row),
             SentRow::Proposal(row) => message.proposals.push(row.clone()),
+            SentRow::Restriction(row) => message.restrictions.push(row.clone()),
+            SentRow::Background(row) => message.background.push(row.clone()),
+            SentRow::Flow(row) => message.flows.push(row.clone()),
+            SentRow::Decision(row) => message.decisions.push(row.clone()),
         }
     }
 }
