@@ -1,7 +1,7 @@
 //! What can be asked on the command line.
 
 use crate::commands::{
-    ask, audit, check, compare, completions, demo, export, new, plan, policy, serve, why,
+    ask, audit, check, compare, completions, demo, export, new, plan, policy, serve, trade_off, why,
 };
 use crate::report::cautions;
 use crate::tables::time::parse_utc;
@@ -46,6 +46,8 @@ pub(crate) enum Command {
     Plan(plan::PlanArgs),
     /// Tell why a plan leaves a proposal out, and what it would take to let it in.
     Why(why::WhyArgs),
+    /// Find what plans buy for how many moved flights and how much fuel.
+    TradeOff(trade_off::TradeOffArgs),
     /// Write the search's model of a day as free MPS, for other solvers.
     Export(export::ExportArgs),
     /// Judge a plan by code that shares none of the search's shortcuts.

@@ -12,6 +12,7 @@ pub(crate) mod plan;
 pub(crate) mod policy;
 pub(crate) mod serve;
 pub(crate) mod session;
+pub(crate) mod trade_off;
 pub(crate) mod why;
 
 use crate::args::{Args, Command};
@@ -44,6 +45,7 @@ pub(crate) fn run(args: Args, screen: &Screen) -> Result<Answered, Failure> {
                 Command::Compare(args) => compare::run(&args, &session).await,
                 Command::Export(args) => export::run(&args, &session).await,
                 Command::Why(args) => why::run(&args, &session).await,
+                Command::TradeOff(args) => trade_off::run(&args, &session).await,
                 Command::Audit(args) => audit::run(&args, &session).await,
                 Command::Policy(args) => policy::run(&args, &session).await,
                 Command::Completions(_) | Command::New(_) | Command::Serve(_) => {

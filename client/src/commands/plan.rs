@@ -9,7 +9,9 @@ use crate::report::plan::PlanReport;
 use crate::screen::Form;
 use indicatif::ProgressBar;
 use rimeshift_proto::v1::find_plans_response::Content;
-use rimeshift_proto::v1::{FindPlansRequest, PlanRows, SearchProgress};
+use rimeshift_proto::v1::{
+    FindPlansRequest, PlanRows, PolicySetting, PolicyValue, SearchProgress, policy_value,
+};
 use std::path::PathBuf;
 use std::time::Duration;
 use tonic::Status;
@@ -50,6 +52,23 @@ pub(crate) struct SearchArgs {
     /// Seed of the search: the same day, policy, seed and work give the same plan.
     #[arg(long, value_name = "N", default_value_t = 1)]
     seed: u64,
+    /// How plans keep flights apart, in place of the day's own choice.
+    #[arg(long, value_name = "RULE", value_parser = ["nominal", "buffered", "risk", "priced"])]
+    separation: Option<String>,
+    /// For how many of the dearest limits to find exactly what one more would gain.
+    #[arg(long, value_name = "N", default_value_t = 0, value_parser = clap::value_parser!(u32).range(0..=100))]
+    exact_limits: u32,
+}
+
+impl SearchArgs {
+    /// The keys of the policy that the command line sets.
+    fn policy(&self) -> Vec<PolicySetting> {
+        let separation = self.separation.iter().map(|rule| PolicySetting {
+            key: "separation".to_owned(),
+            value: Some(PolicyValue { kind: Some(policy_value::Kind::Text(rule.clone())) }),
+        });
+        separation.collect()
+    }
 }
 
 /// Plans a day folder.
@@ -110,6 +129,8 @@ async fn collect(
         plans: Some(search.plans),
         seed: search.seed,
         gap: search.gap,
+        policy: search.policy(),
+        exact_limits: search.exact_limits,
         max_time: search.seconds.and_then(|time| prost_types::Duration::try_from(time).ok()),
         ..FindPlansRequest::default()
     };
@@ -130,6 +151,7 @@ async fn collect(
                     last.rows.losses.extend(rows.losses);
                 }
             }
+            Some(Content::LimitPrices(limits)) => found.limit_prices.extend(limits.prices),
             None => {}
         }
     }

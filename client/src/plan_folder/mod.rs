@@ -20,7 +20,7 @@ pub(crate) use document::{ReasonDocument, StretchDocument};
 pub(crate) use read::{load, read};
 pub(crate) use write::{Existing, check_place, write};
 
-use rimeshift_proto::v1::{Day, Plan, PlanOrigin, PlanRows};
+use rimeshift_proto::v1::{Day, LimitPrice, Plan, PlanOrigin, PlanRows};
 
 /// The plans that a search found, best first.
 #[derive(Debug, Clone, Default)]
@@ -31,6 +31,8 @@ pub(crate) struct FoundPlans {
     pub(crate) origin: PlanOrigin,
     /// The plans.
     pub(crate) plans: Vec<FoundPlan>,
+    /// What the limits that bind cost the best one, dearest first.
+    pub(crate) limit_prices: Vec<LimitPrice>,
 }
 
 /// One plan with its rows.

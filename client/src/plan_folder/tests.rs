@@ -211,6 +211,7 @@ pub(crate) fn plans() -> FoundPlans {
         },
         origin,
         plans: vec![FoundPlan { plan, rows }, other],
+        limit_prices: Vec::new(),
     }
 }
 

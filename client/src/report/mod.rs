@@ -15,4 +15,5 @@ pub(crate) mod policy;
 mod sheet;
 #[cfg(test)]
 mod tests;
+pub(crate) mod trade_off;
 pub(crate) mod why;

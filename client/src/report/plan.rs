@@ -1,7 +1,9 @@
 //! The report of a plan.
 
 use super::cautions;
-use super::figures::{counted, date, flight_level, percent, scientific, second, tenth};
+use super::figures::{
+    counted, date, flight_level, percent, period, rfc3339, scientific, second, tenth,
+};
 use super::names;
 use super::sheet::{Sheet, first_rows, numbers, words};
 use crate::plan_folder::{FoundPlan, FoundPlans, ReasonDocument, StretchDocument};
@@ -9,7 +11,7 @@ use crate::screen::Layout;
 use rimeshift_proto::v1::constraint::Kind;
 use rimeshift_proto::v1::policy_value;
 use rimeshift_proto::v1::{
-    Constraint, Decision, LoadMeasure, LossVersion, PlannedStretch, Stopped, Verdict,
+    Constraint, Decision, LimitPrice, LoadMeasure, LossVersion, PlannedStretch, Stopped, Verdict,
 };
 use serde_json::{Value, json};
 use std::collections::BTreeMap;
@@ -140,6 +142,10 @@ impl PlanReport<'_> {
         let columns =
             [words("proposal"), words("flight"), words("why not"), words("what would make room")];
         sheet.table("Refused", columns, rows, more);
+        let (rows, more) = first_rows(&self.found.limit_prices, limit_price_row);
+        let columns =
+            [words("limit"), words("counted"), words("when"), numbers("about"), numbers("exactly")];
+        sheet.table("What one more would gain", columns, rows, more);
         self.others(&mut sheet);
         if let Some(folder) = self.written_to {
             sheet.heading(&format!("Written to {}", folder.display()));
@@ -244,6 +250,7 @@ impl PlanReport<'_> {
             "new_losses": totals.new_losses,
             "removed_losses": totals.removed_losses,
             "expected_new_losses": best.plan.expected_new_losses,
+            "limit_prices": self.found.limit_prices.iter().map(limit_price_json).collect::<Vec<_>>(),
             "written_to": self.written_to.map(|folder| folder.display().to_string()),
             "decisions": decisions,
             "cautions": [cautions::LOSSES, cautions::FULL],
@@ -266,6 +273,39 @@ fn reason_counts(best: &FoundPlan) -> BTreeMap<&'static str, usize> {
         }
     }
     counts
+}
+
+fn limit_price_row(price: &LimitPrice) -> [String; 5] {
+    use rimeshift_proto::v1::limit_price::Limit;
+    let (limit, counted, when) = match &price.limit {
+        Some(Limit::Place(place)) => (
+            names::place(Some(place)).to_owned(),
+            names::measure(price.measure).to_owned(),
+            period(price.from.as_ref(), price.until.as_ref()),
+        ),
+        Some(Limit::PolicyKey(key)) => (key.clone(), "policy".to_owned(), "-".to_owned()),
+        None => Default::default(),
+    };
+    let exact = price.exact.map_or_else(|| "-".to_owned(), scientific);
+    [limit, counted, when, scientific(price.estimate), exact]
+}
+
+fn limit_price_json(price: &LimitPrice) -> Value {
+    use rimeshift_proto::v1::limit_price::Limit;
+    let (place, key) = match &price.limit {
+        Some(Limit::Place(place)) => (Some(names::place(Some(place))), None),
+        Some(Limit::PolicyKey(key)) => (None, Some(key.as_str())),
+        None => (None, None),
+    };
+    json!({
+        "place": place,
+        "policy_key": key,
+        "measure": place.map(|_| names::measure(price.measure)),
+        "from": rfc3339(price.from.as_ref()),
+        "until": rfc3339(price.until.as_ref()),
+        "estimate": price.estimate,
+        "exact": price.exact,
+    })
 }
 
 fn granted_row(decision: &Decision) -> [String; 9] {

@@ -83,51 +83,51 @@ fn a_check_counts_first_and_lists_then() {
     check(
         &report.text(Layout::Plain),
         expect![[r#"
-        Nowhere 2031-03-04: as filed, 1 overload and 22 losses of separation among 1200 flights.
-        A day ahead, times are uncertain by minutes: losses at nominal times speak of the timetable, not of
-        the day.
-        No flight is moved here, so no new losses are expected.
-        1 proposal breaks a rule of level changes with every option.
-        1 flight is marked not movable.
-        3 movable flights have no cruise and can't be changed.
+            Nowhere 2031-03-04: as filed, 1 overload and 22 losses of separation among 1200 flights.
+            A day ahead, times are uncertain by minutes: losses at nominal times speak of the timetable, not of
+            the day.
+            No flight is moved here, so no new losses are expected.
+            1 proposal breaks a rule of level changes with every option.
+            1 flight is marked not movable.
+            3 movable flights have no cruise and can't be changed.
 
-        Overloads
-         where  counted          when               count  limit
-         NORTH  entries an hour  03-04 06:00–07:40  33.50     30
+            Overloads
+             where  counted          when               count  limit
+             NORTH  entries an hour  03-04 06:00–07:40  33.50     30
 
-        Losses of separation at filed times
-         flight  other flight  closest at        NM   ft  sector
-         AAA0    BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA1    BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA2    BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA3    BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA4    BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA5    BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA6    BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA7    BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA8    BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA9    BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA10   BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA11   BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA12   BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA13   BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA14   BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA15   BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA16   BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA17   BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA18   BBB2          03-04 01:00:21  4.26  500  NORTH
-         AAA19   BBB2          03-04 01:00:21  4.26  500  NORTH
-        … and 2 more; --json lists all
+            Losses of separation at filed times
+             flight  other flight  closest at        NM   ft  sector
+             AAA0    BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA1    BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA2    BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA3    BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA4    BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA5    BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA6    BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA7    BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA8    BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA9    BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA10   BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA11   BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA12   BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA13   BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA14   BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA15   BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA16   BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA17   BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA18   BBB2          03-04 01:00:21  4.25  500  NORTH
+             AAA19   BBB2          03-04 01:00:21  4.25  500  NORTH
+            … and 2 more; --json lists all
 
-        Proposals that break a rule
-         proposal  why
-         P7        it is no level of the direction of flight (91°)
+            Proposals that break a rule
+             proposal  why
+             P7        it is no level of the direction of flight (91°)
 
-        A planning aid: it gives no clearances and replaces no controller, no flight-plan acceptance and no
-        local procedure. Minima and capacities are yours to set, under local rules and licensed practice.
-        Left out: water vapour, NOx and aerosol effects, speed control, lateral changes, climb performance
-        near the ceiling.
-    "#]],
+            A planning aid: it gives no clearances and replaces no controller, no flight-plan acceptance and no
+            local procedure. Minima and capacities are yours to set, under local rules and licensed practice.
+            Left out: water vapour, NOx and aerosol effects, speed control, lateral changes, climb performance
+            near the ceiling.
+        "#]],
     );
     check(
         &keys(&report.json()),

@@ -274,3 +274,21 @@ P2,BBB2,340,2031-03-04T06:10:00Z,2031-03-04T06:50:00Z,60,0
     assert_eq!(unknown.code, Some(2), "{}", unknown.err);
     assert!(unknown.err.contains("--proposal"), "{}", unknown.err);
 }
+
+#[test]
+fn a_trade_off_ends_in_the_best_plan() {
+    let day = day_with("");
+    let traced = run(&["trade-off", arg(day.path()), "--points", "2", "--json"]);
+    assert_eq!(traced.code, Some(0), "{}", traced.err);
+    let value: serde_json::Value = serde_json::from_str(&traced.out).expect("JSON");
+    assert_eq!(value["points"][0]["moved_flights"], 1);
+    assert_eq!(value["points"][0]["gap"], 0.0);
+    let separation = ["--separation", "priced"];
+    let within = tempfile::tempdir().expect("a folder");
+    let plan = within.path().join("plan");
+    let mut args = vec!["plan", arg(day.path()), "--out", arg(&plan)];
+    args.extend(separation);
+    assert_eq!(run(&args).code, Some(0));
+    let text = fs::read_to_string(plan.join("plan.json")).expect("text");
+    assert!(text.contains("\"separation\": \"priced\""), "{text}");
+}

@@ -26,6 +26,8 @@ use crate::wire::{policy, to_wire};
 
 /// Most plans of one search.
 const MOST_PLANS: u32 = 20;
+/// Most limits whose price is found by searching again.
+const MOST_EXACT_LIMITS: u32 = 100;
 /// Least time between two messages of progress.
 const PROGRESS_STEP: Duration = Duration::from_millis(100);
 /// Keys that are applied when a day is loaded, and can't be changed after.
@@ -164,7 +166,12 @@ fn options(request: &v1::FindPlansRequest, fields: &mut Fields) -> FindOptions {
     if !(0.0..=1.0).contains(&gap) {
         fields.push(|| "gap".to_owned(), format!("`{gap}` is out of range"), "0 to 1");
     }
-    FindOptions { plans: plans as usize, seed: request.seed, work, gap, ..default }
+    if request.exact_limits > MOST_EXACT_LIMITS {
+        let problem = format!("`{}` is out of range", request.exact_limits);
+        fields.push(|| "exact_limits".to_owned(), problem, format!("0 to {MOST_EXACT_LIMITS}"));
+    }
+    let exact_limits = request.exact_limits.min(MOST_EXACT_LIMITS) as usize;
+    FindOptions { plans: plans as usize, seed: request.seed, work, gap, exact_limits, ..default }
 }
 
 fn max_time(time: Option<prost_types::Duration>, fields: &mut Fields) -> Option<Duration> {
@@ -278,10 +285,12 @@ async fn send_plans(
         name: kept.get(i).cloned().unwrap_or_default(),
         ..to_wire::plan_summary(record)
     });
+    let prices = (!plans.limit_prices.is_empty())
+        .then(|| Content::LimitPrices(answers.limit_prices(&plans.limit_prices)));
     let plans = plans.plans.iter().zip(summaries).flat_map(|(plan, summary)| {
         std::iter::once(Content::Plan(summary)).chain(rows(answers, plan).map(Content::Rows))
     });
-    for content in std::iter::once(Content::Origin(origin)).chain(plans) {
+    for content in std::iter::once(Content::Origin(origin)).chain(prices).chain(plans) {
         if sender.send(Ok(message(content))).await.is_err() {
             return;
         }

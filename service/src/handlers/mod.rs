@@ -7,6 +7,7 @@ mod export;
 mod find;
 mod paging;
 mod plan;
+mod trade_off;
 mod traffic;
 
 use std::sync::Arc;

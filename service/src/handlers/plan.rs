@@ -85,6 +85,15 @@ impl PlanService for Api {
     }
 
     #[tracing::instrument(skip_all)]
+    async fn trace_trade_off(
+        &self,
+        request: Request<v1::TraceTradeOffRequest>,
+    ) -> Result<Response<v1::TraceTradeOffResponse>, Status> {
+        let deadline = deadline::of_call(request.metadata());
+        Ok(Response::new(self.traced(request.into_inner(), deadline).await?))
+    }
+
+    #[tracing::instrument(skip_all)]
     async fn export_model(
         &self,
         request: Request<v1::ExportModelRequest>,

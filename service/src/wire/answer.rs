@@ -3,9 +3,9 @@
 
 use prost_types::Timestamp;
 use rimeshift_engine::answer::{
-    AskAnswer, AskVerdict, Constraint, DayCheck, Decision, Exchange, LoadCount, LoadMeasure, Loss,
-    LossIn, MovedProfile, Overload, Place, PlanLoss, PlannedStretch, Reason, Rule, Stopped,
-    Verdict, Why,
+    AskAnswer, AskVerdict, Constraint, DayCheck, Decision, Exchange, LimitPrice, LoadCount,
+    LoadMeasure, Loss, LossIn, MovedProfile, Overload, Place, PlanLoss, PlannedStretch, Reason,
+    Rule, Stopped, TradeOff, TradeOffLimit, Verdict, Why,
 };
 use rimeshift_engine::day::Day;
 use rimeshift_engine::ids::{FlightId, ProposalId, RestrictionId, SectorId};
@@ -42,6 +42,39 @@ impl Answers<'_> {
 
     pub(super) fn sector(&self, id: SectorId) -> String {
         self.day.sectors.get(id).map_or_else(String::new, |sector| sector.name.clone())
+    }
+
+    pub(crate) fn limit_prices(&self, prices: &[LimitPrice]) -> v1::LimitPrices {
+        use v1::limit_price::Limit;
+        let prices = prices.iter().map(|price| v1::LimitPrice {
+            limit: match (price.place, price.policy_key) {
+                (Some(place), _) => Some(Limit::Place(self.place(place))),
+                (None, key) => key.map(|key| Limit::PolicyKey(key.to_owned())),
+            },
+            measure: price.measure.map_or(v1::LoadMeasure::Unspecified, measure).into(),
+            from: price.place.and_then(|_| self.time(price.from_s)),
+            until: price.place.and_then(|_| self.time(price.until_s)),
+            estimate: price.estimate,
+            exact: price.exact,
+        });
+        v1::LimitPrices { prices: prices.collect() }
+    }
+
+    pub(crate) fn trade_off(&self, curve: &TradeOff) -> v1::TraceTradeOffResponse {
+        use v1::trade_off_point::Limit;
+        let points = curve.points.iter().map(|point| v1::TradeOffPoint {
+            limit: match point.limit {
+                TradeOffLimit::None => None,
+                TradeOffLimit::MovedFlights(most) => Some(Limit::MostMovedFlights(most)),
+                TradeOffLimit::ExtraFuelKg(most) => Some(Limit::MostExtraFuelKg(most)),
+            },
+            moved_flights: point.moved_flights,
+            contrail_km_avoided: point.contrail_km_avoided,
+            extra_fuel_kg: point.extra_fuel_kg,
+            objective: point.objective,
+            bound: point.bound,
+        });
+        v1::TraceTradeOffResponse { points: points.collect() }
     }
 
     pub(crate) fn why(&self, why: &Why) -> v1::ExplainRefusalResponse {

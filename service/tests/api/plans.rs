@@ -50,6 +50,7 @@ async fn find(
             Content::Progress(_) => assert!(found.plans.is_empty()),
             Content::Origin(origin) => found.origin = origin,
             Content::Plan(plan) => found.plans.push((plan, v1::PlanRows::default())),
+            Content::LimitPrices(_) => {}
             Content::Rows(rows) => {
                 let (_, all) = found.plans.last_mut().unwrap();
                 all.decisions.extend(rows.decisions);
