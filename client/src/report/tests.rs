@@ -262,7 +262,7 @@ fn a_plan_says_what_is_granted_and_why_the_rest_is_not() {
     check(
         &keys(&report.json()),
         expect![
-            "amended bound cautions contrail_km_avoided date day_sha256 decisions expected_new_losses extra_fuel_kg gap granted invalid new_losses objective planned_losses planned_overloads refused region removed_losses stopped written_to"
+            "amended bound cautions contrail_km_avoided date day_sha256 decisions expected_new_losses extra_fuel_kg gap granted invalid limit_prices new_losses objective planned_losses planned_overloads refused region removed_losses stopped written_to"
         ],
     );
     assert_eq!((report.planned_overloads(), report.planned_losses()), (1, 0));

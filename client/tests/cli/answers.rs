@@ -102,7 +102,7 @@ fn a_question_is_answered_yes_no_or_invalid() {
         no: AAA1 at FL 380, against the filed day, is blocked.
 
         Blocked by
-          a loss of separation with BBB2 at 03-04 06:11:00: 0.60 NM, 1000 ft
+          a loss of separation with BBB2 at 03-04 06:11:00: 0.60 NM, 999 ft
 
         What it would do
           leaves its level at 03-04 06:10:00, starts to return at 03-04 06:50:00
