@@ -30,12 +30,19 @@ pub fn surface_m(chord_m: f64) -> f64 {
 /// their difference is left out, so that two flights over one place are zero metres apart.
 #[must_use]
 pub fn horizontal_m(a: [f64; 3], b: [f64; 3]) -> f64 {
-    // Normal of the ellipsoid midway, up to its length.
-    let up = [a[0] + b[0], a[1] + b[1], (a[2] + b[2]) / (1.0 - ECCENTRICITY_SQUARED)];
     let apart = minus(a, b);
-    let along_up = dot(apart, up);
-    let squared = dot(apart, apart) - along_up * along_up / dot(up, up).max(f64::MIN_POSITIVE);
+    let midway: [f64; 3] = std::array::from_fn(|k| 0.5 * (a[k] + b[k]));
+    let squared = dot(apart, apart) - along_up_squared(apart, midway);
     surface_m(squared.max(0.0).sqrt())
+}
+
+/// Square of what is vertical, at a place near the ellipsoid, in a vector; square metres.
+#[must_use]
+pub fn along_up_squared(vector_m: [f64; 3], place_m: [f64; 3]) -> f64 {
+    // Normal of the ellipsoid, up to its length.
+    let up = [place_m[0], place_m[1], place_m[2] / (1.0 - ECCENTRICITY_SQUARED)];
+    let along_up = dot(vector_m, up);
+    along_up * along_up / dot(up, up).max(f64::MIN_POSITIVE)
 }
 
 /// A point that moves in a straight line at constant speed.

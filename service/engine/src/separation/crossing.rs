@@ -8,38 +8,12 @@
 //! are convex, so the shifts t - s of their intersection form one interval. Its ends lie at the
 //! ellipse's own extremes, where these are inside, or on an edge of the polygon.
 
+use super::leg::Leg;
 use crate::geometry::motion::{below_zero, dot, minus};
 
 /// Tracks whose directions differ by less than a millionth of a radian count as parallel, which
 /// moves places by 2 cm over 10 NM.
 const PARALLEL: f64 = 1e-12;
-
-/// A part of a flight along a straight chord, its level changing evenly, within which its minima
-/// do not change.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub(super) struct Leg {
-    pub(super) from_s: f64,
-    pub(super) until_s: f64,
-    pub(super) place_m: [f64; 3],
-    pub(super) velocity_mps: [f64; 3],
-    pub(super) level_ft: f64,
-    pub(super) climb_ftps: f64,
-    /// A level that decides which vertical minimum holds on the leg.
-    pub(super) class_ft: f64,
-    /// Horizontal minimum, metres along the surface.
-    pub(super) horizontal_m: f64,
-}
-
-impl Leg {
-    fn duration_s(&self) -> f64 {
-        self.until_s - self.from_s
-    }
-
-    fn level_range_ft(&self) -> (f64, f64) {
-        let end_ft = self.level_ft + self.climb_ftps * self.duration_s();
-        (self.level_ft.min(end_ft), self.level_ft.max(end_ft))
-    }
-}
 
 /// A point of the plane: seconds since the start of each leg.
 type Moment = [f64; 2];
@@ -56,7 +30,7 @@ pub(super) fn shifts(a: &Leg, b: &Leg, limit_m: f64, limit_ft: f64) -> Option<(f
         a_mps: a.velocity_mps,
         b_mps: b.velocity_mps,
     };
-    let (last_t, last_s) = (a.duration_s(), b.duration_s());
+    let (last_t, last_s) = (a.lasts_s(), b.lasts_s());
     // Far apart even from the middle of one leg to the middle of the other.
     let middle = apart.at([last_t / 2.0, last_s / 2.0]);
     let length = |mps: [f64; 3], duration_s: f64| dot(mps, mps).sqrt() * duration_s;
@@ -205,14 +179,17 @@ mod tests {
         level: [f64; 2],
     ) -> Leg {
         Leg {
+            owner: 0,
+            piece: 0,
             from_s,
             until_s: from_s + duration_s,
             place_m: [place[0], place[1], 0.0],
             velocity_mps: [velocity[0], velocity[1], 0.0],
             level_ft: level[0],
             climb_ftps: (level[1] - level[0]) / duration_s,
-            class_ft: level[0],
-            horizontal_m: 9260.0,
+            chord_m: 9260.0,
+            stray_m: 0.0,
+            rvsm: true,
         }
     }
 

@@ -1,5 +1,6 @@
 //! How far apart two flights must be.
 
+use crate::day::Policy;
 use crate::geometry::motion::chord_m;
 use crate::units::{fl_to_ft, nm_to_m};
 
@@ -46,6 +47,15 @@ impl Minimum {
 /// How near to a minimum either answer is right, metres.
 pub(super) const MARGIN_M: f64 = 0.5;
 
+/// What a coarse test adds to a chord of the plain minimum, so that no loss at the wider minimum
+/// is passed over, metres.
+pub(super) const FILTER_MARGIN_M: f64 = MARGIN_M + 2.0 * HORIZONTAL_ROUNDING_M;
+
+/// Most that different depths of two flights may add to the distance between them, metres.
+const DEPTHS_ADD_M: f64 = 0.2;
+/// Deepest that a leg ever passes below its ends: 30 NM of the earth's curvature, metres.
+const MOST_DEEP_M: f64 = 61.0;
+
 /// A period in which a flight has a horizontal minimum of its own: that of the sector where it is.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct HorizontalMinimum {
@@ -57,19 +67,35 @@ pub struct HorizontalMinimum {
     pub horizontal_nm: f64,
 }
 
-/// What the policy says about separation, in metres and feet.
+/// What the policy and the sectors say about separation, in metres and feet.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(super) struct Rules {
     /// Horizontal minimum where no sector sets its own.
     pub(super) horizontal_m: f64,
+    /// Its chord.
+    pub(super) chord_m: f32,
+    /// Longest chord of any minimum, with what coarse tests add.
+    pub(super) widest_m: f32,
+    /// How far below its ends a leg may pass.
+    pub(super) deepest_m: f64,
     /// Losses are looked for at or above this level.
     pub(super) floor_ft: f64,
 }
 
 impl Rules {
-    pub(super) fn new(policy: &crate::day::Policy) -> Self {
+    /// `own_nm` are the minima that sectors set.
+    pub(super) fn new(policy: &Policy, own_nm: impl Iterator<Item = f64>) -> Self {
+        let horizontal_m = nm_to_m(policy.horizontal_nm);
+        let own_m = own_nm.map(nm_to_m);
+        let (least_m, most_m) = own_m.fold((horizontal_m, horizontal_m), |(least, most), own| {
+            (least.min(own), most.max(own))
+        });
+        let widest_m = limit_chord_m(most_m, Minimum::Plain) + FILTER_MARGIN_M;
         Self {
-            horizontal_m: nm_to_m(policy.horizontal_nm),
+            horizontal_m,
+            chord_m: limit_chord_m(horizontal_m, Minimum::Plain) as f32,
+            widest_m: (widest_m as f32).next_up(),
+            deepest_m: (2.0 * DEPTHS_ADD_M * least_m).sqrt().min(MOST_DEEP_M),
             floor_ft: fl_to_ft(policy.separation_floor_fl),
         }
     }

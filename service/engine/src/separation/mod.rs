@@ -6,13 +6,14 @@
 //! two pieces the flights move along straight chords, the square of their distance is a quadratic of
 //! time and their difference in level is linear, so a loss lies between roots ([`pair_losses`]).
 //!
-//! To find the few pairs that matter among millions, flights are cut into slices of five minutes.
-//! Within a slice, boxes around what each flight does are sorted and swept; boxes that meet are
-//! compared as straight motions with a bound on how far the flights stray from them; what is left is
-//! solved exactly. Each filter keeps whatever could be a loss, by the bounds stated with it.
+//! To find the few pairs that matter among millions, flights are cut into straight legs, listed by
+//! cells of space and slots of levels in order of time. Legs that meet in a list are compared by the
+//! balls around them, then as straight motions with a bound on how far the flights stray from
+//! them; what is left is solved exactly. Each filter keeps whatever could be a loss, by the bounds
+//! stated with it.
 //!
 //! A day ahead, times are uncertain. By how much one flight may be later than another so that they
-//! lose separation is their shift set ([`shift_set`]), an interval for each two straight pieces; the
+//! lose separation is their shift set ([`shift_set`]), an interval for each two straight legs; the
 //! normal probability of the set is that of a loss, and what changes add to it are the expected new
 //! losses ([`expected_new_losses`]). The idea of conflict probability: Paielli & Erzberger 1997
 //! (J. Guid. Control Dyn. 20), here with errors along the track only.
@@ -20,12 +21,14 @@
 mod crossing;
 mod index;
 mod known;
+mod leg;
 mod minima;
 mod moved;
 mod pair;
+mod parts;
+mod reach;
 mod risk;
 mod scene;
-mod segment;
 mod shift_clashes;
 mod shift_set;
 #[cfg(test)]

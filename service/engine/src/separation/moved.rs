@@ -5,10 +5,9 @@ use rayon::prelude::*;
 use super::index::Index;
 use super::known::is_new;
 use super::minima::Minimum;
-use super::pair::Breach;
-use super::scene::{Scene, Version, joined, loss};
-use super::segment::segments;
-use super::versions::{Sweep, VersionRef, flight_of, new_losses_against_filed, sort};
+use super::parts::{Parts, owned_by};
+use super::scene::{Found, Scene, Version, joined, loss, sort};
+use super::versions::{Sweep, VersionRef, flight_of, new_losses_against_filed};
 use crate::answer::Loss;
 use crate::ids::FlightId;
 
@@ -27,11 +26,11 @@ impl MovedIndex {
     pub fn new(scene: &Scene, moved: &[Version<'_>]) -> Self {
         let own: Vec<_> = (0..moved.len())
             .into_par_iter()
-            .map(|i| segments(i as u32, &scene.course(&moved[i]), &scene.rules, 0, f64::INFINITY))
+            .map(|i| owned_by(i, Parts::of(scene, &moved[i]).all()))
             .collect();
         let mut flights: Vec<_> = moved.iter().enumerate().map(|(i, v)| (v.flight, i)).collect();
         flights.sort_unstable();
-        Self { index: Index::new(&own), flights }
+        Self { index: Index::new(&own, scene.rules.widest_m), flights }
     }
 
     /// Position of a flight in the list; `None` if it is not moved.
@@ -51,8 +50,7 @@ impl MovedIndex {
 pub fn losses_of_moved(scene: &Scene, moved: &[Version<'_>]) -> Vec<Loss> {
     let index = MovedIndex::new(scene, moved);
     let sweep = Sweep { scene, versions: moved, minimum: Minimum::Plain };
-    let mut found = sweep.breaches(&index.index, |flight| index.position(flight).is_none());
-    sort(&mut found);
+    let found = sweep.breaches(&index.index, |flight| index.position(flight).is_none());
     let flight = |version: VersionRef| flight_of(version, moved);
     let mut losses: Vec<Loss> =
         joined(&found).map(|(a, b, breach)| loss(flight(a), flight(b), &breach)).collect();
@@ -75,16 +73,15 @@ pub fn new_losses_in_plan(
         let other = if loss.first == version.flight { loss.second } else { loss.first };
         index.position(other).is_none()
     });
-    let mut found: Vec<(usize, usize, Breach)> = Vec::new();
-    for (number, segment) in segments(0, &scene.course(version), &scene.rules, 0, f64::INFINITY) {
-        let Some(slice) = index.index.slice(number) else { continue };
-        slice.near(&segment.bounds, |other_segment| {
-            let position = other_segment.owner as usize;
+    let mut found: Vec<Found<usize>> = Vec::new();
+    for leg in scene.legs(version) {
+        index.index.near(&leg, (leg.from_s, leg.until_s), |other_leg| {
+            let position = other_leg.owner as usize;
             let Some(other) = moved.get(position).filter(|o| o.flight != version.flight) else {
                 return;
             };
-            let Some(within) = segment.common_time(other_segment) else { return };
-            let mut pieces = [segment.piece as usize, other_segment.piece as usize];
+            let Some(within) = leg.near_time(other_leg) else { return };
+            let mut pieces = [leg.piece as usize, other_leg.piece as usize];
             if other.flight < version.flight {
                 pieces.reverse();
             }

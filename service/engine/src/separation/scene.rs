@@ -5,9 +5,10 @@ use std::sync::Arc;
 use rayon::prelude::*;
 
 use super::index::Index;
+use super::leg::{Leg, push_legs};
 use super::minima::{HorizontalMinimum, Minimum, Rules};
 use super::pair::{Breach, Course, Pair};
-use super::segment::{Segment, segments};
+use super::parts::Parts;
 use crate::answer::Loss;
 use crate::day::{Day, Policy};
 use crate::ids::{FlightId, Id, IdVec};
@@ -47,23 +48,29 @@ impl Scene {
         tracks: Arc<IdVec<FlightId, Track>>,
         minima: IdVec<FlightId, Vec<HorizontalMinimum>>,
     ) -> Self {
+        let own_nm = day.sectors.iter().filter_map(|sector| sector.horizontal_nm);
+        let own_nm = own_nm.chain(minima.iter().flatten().map(|m| m.horizontal_nm));
+        let rules = Rules::new(&day.policy, own_nm);
         let mut scene = Self {
             tracks,
             minima,
             rvsm: day.flights.iter().map(|f| f.rvsm).collect(),
-            rules: Rules::new(&day.policy),
+            rules,
             policy: day.policy.clone(),
             index: Index::default(),
             losses: Vec::new(),
         };
-        let cut: Vec<Vec<(i64, Segment)>> = (0..scene.tracks.len())
+        let legs: Vec<Vec<Leg>> = (0..scene.tracks.len())
             .into_par_iter()
             .map(|i| {
                 let id = FlightId::from_index(i);
-                segments(id.0, &scene.course(&scene.filed(id)), &scene.rules, 0, f64::INFINITY)
+                let course = scene.course(&scene.filed(id));
+                let mut legs = Vec::new();
+                push_legs(id.0, &course, &scene.rules, 0..course.path.len() - 1, &mut legs);
+                legs
             })
             .collect();
-        scene.index = Index::new(&cut);
+        scene.index = Index::new(&legs, scene.rules.widest_m);
         scene.losses = filed_losses(&scene);
         scene
     }
@@ -98,6 +105,11 @@ impl Scene {
         }
     }
 
+    /// The legs of a version.
+    pub(super) fn legs(&self, version: &Version<'_>) -> Vec<Leg> {
+        Parts::of(self, version).all().collect()
+    }
+
     /// The pair of two versions, the one of the smaller flight first.
     pub(super) fn pair<'a>(
         &'a self,
@@ -128,41 +140,30 @@ pub(super) fn loss(first: FlightId, second: FlightId, breach: &Breach) -> Loss {
 /// [`Scene::losses`] holds them.
 #[must_use]
 pub fn filed_losses(scene: &Scene) -> Vec<Loss> {
-    let mut found: Vec<(FlightId, FlightId, Breach)> = scene
-        .index
-        .slices()
-        .par_iter()
-        .flat_map_iter(|slice| {
-            let mut found = Vec::new();
-            slice.pairs(|one, other| {
-                let (a, b) = if one.owner < other.owner { (one, other) } else { (other, one) };
-                if a.owner == b.owner {
-                    return;
-                }
-                let Some(within) = a.common_time(b) else { return };
-                let (first, second) = (FlightId(a.owner), FlightId(b.owner));
-                let pair = scene.pair(&scene.filed(first), &scene.filed(second), Minimum::Plain);
-                let pieces = Some([a.piece as usize, b.piece as usize]);
-                let breaches = pair.breaches(within, pieces);
-                found.extend(breaches.into_iter().map(|breach| (first, second, breach)));
-            });
-            found
-        })
-        .collect();
-    found.sort_by(|x, y| (x.0, x.1).cmp(&(y.0, y.1)).then(x.2.from_s.total_cmp(&y.2.from_s)));
+    let (mut found, _) = scene.index.pairs(|one, other, found: &mut Vec<Found<FlightId>>| {
+        let [one, other] = if one.owner < other.owner { [one, other] } else { [other, one] };
+        let Some(within) = one.near_time(other) else { return };
+        let [first, second] = [one, other].map(|leg| FlightId(leg.owner));
+        let pair = scene.pair(&scene.filed(first), &scene.filed(second), Minimum::Plain);
+        let breaches = pair.breaches(within, Some([one, other].map(|leg| leg.piece as usize)));
+        found.extend(breaches.into_iter().map(|breach| (first, second, breach)));
+    });
+    sort(&mut found);
     joined(&found).map(|(first, second, breach)| loss(first, second, &breach)).collect()
 }
 
-/// How many pairs are left after each filter in the search for the filed day's losses.
+/// How many pairs of legs are left after each filter in the search for the filed day's losses.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub struct Survivors {
-    /// Segments: parts of flights within slices of time.
-    pub segments: u64,
-    /// Pairs of segments within one slice.
+    /// Legs: parts of flights.
+    pub legs: u64,
+    /// Pairs of legs.
     pub pairs: u64,
-    /// Pairs whose boxes meet.
-    pub boxes_meet: u64,
-    /// Pairs whose straight motions come near enough.
+    /// Pairs that meet in time in a cell and slot of the index.
+    pub lists_meet: u64,
+    /// Pairs whose balls and levels meet.
+    pub bounds_meet: u64,
+    /// Pairs whose motions come near enough.
     pub motions_meet: u64,
     /// Pairs that lose separation.
     pub lose: u64,
@@ -171,27 +172,39 @@ pub struct Survivors {
 /// Counts the pairs that each filter leaves over.
 #[must_use]
 pub fn survivors(scene: &Scene) -> Survivors {
-    let mut count = Survivors::default();
-    for slice in scene.index.slices() {
-        let segments = slice.segments().len() as u64;
-        count.segments += segments;
-        count.pairs += segments * segments.saturating_sub(1) / 2;
-        slice.pairs(|a, b| {
-            count.boxes_meet += 1;
-            let Some(within) = a.common_time(b) else { return };
-            count.motions_meet += 1;
-            let [one, other] = [a, b].map(|s| scene.filed(FlightId(s.owner)));
-            let pair = scene.pair(&one, &other, Minimum::Plain);
-            count.lose += u64::from(!pair.breaches(within, None).is_empty());
-        });
+    let (found, lists_meet) = scene.index.pairs(|one, other, found: &mut Vec<(bool, bool)>| {
+        let Some(within) = one.near_time(other) else { return found.push((false, false)) };
+        let [a, b] = [one, other].map(|leg| scene.filed(FlightId(leg.owner)));
+        let pair = scene.pair(&a, &b, Minimum::Plain);
+        found.push((true, !pair.breaches(within, None).is_empty()));
+    });
+    let legs = scene.index.len() as u64;
+    let count = |holds: fn(&(bool, bool)) -> bool| found.iter().filter(|f| holds(f)).count() as u64;
+    Survivors {
+        legs,
+        pairs: legs * legs.saturating_sub(1) / 2,
+        lists_meet,
+        bounds_meet: found.len() as u64,
+        motions_meet: count(|f| f.0),
+        lose: count(|f| f.1),
     }
-    count
 }
 
-/// Joins what was cut at the borders of slices. The input is sorted by pair and time.
+/// A breach between two owners.
+pub(super) type Found<K> = (K, K, Breach);
+
+/// Sorts by pair and time.
+pub(super) fn sort<K: Ord + Copy + Send>(found: &mut [Found<K>]) {
+    found.par_sort_unstable_by(|x, y| {
+        let times = || x.2.from_s.total_cmp(&y.2.from_s).then(x.2.until_s.total_cmp(&y.2.until_s));
+        (x.0, x.1).cmp(&(y.0, y.1)).then_with(times)
+    });
+}
+
+/// Joins what was cut at the ends of legs. The input is sorted by pair and time.
 pub(super) fn joined<K: Copy + PartialEq>(
-    found: &[(K, K, Breach)],
-) -> impl Iterator<Item = (K, K, Breach)> + use<'_, K> {
+    found: &[Found<K>],
+) -> impl Iterator<Item = Found<K>> + use<'_, K> {
     let mut rest = found.iter().peekable();
     std::iter::from_fn(move || {
         let (a, b, mut breach) = *rest.next()?;

@@ -4,10 +4,11 @@
 use rayon::prelude::*;
 
 use super::index::Index;
+use super::leg::Leg;
+use super::parts::{Parts, owned_by};
 use super::risk::pair_probability;
 use super::scene::{Scene, Version};
-use super::segment::{Segment, segments};
-use super::shift_set::{Reach, ShiftSet, shift_set};
+use super::shift_set::{ShiftSet, shift_set, visit_shifts};
 use super::versions::{VersionPair, VersionRef};
 use crate::ids::FlightId;
 
@@ -97,28 +98,28 @@ fn tail_s(probability: f64, time_sigma_s: f64) -> f64 {
 /// uncertain times, in order.
 #[must_use]
 pub fn shift_clashes(scene: &Scene, versions: &[Version<'_>], rule: ShiftRule) -> Vec<VersionPair> {
-    let own: Vec<Vec<(i64, Segment)>> = (0..versions.len())
+    let own: Vec<Vec<Leg>> = (0..versions.len())
         .into_par_iter()
-        .map(|i| segments(i as u32, &scene.course(&versions[i]), &scene.rules, 0, f64::INFINITY))
+        .map(|i| owned_by(i, Parts::of(scene, &versions[i]).all()))
         .collect();
-    let index = Index::new(&own);
-    let reach = Reach { scene, within_s: rule.within_s(scene.policy.time_sigma_s) };
+    let index = Index::new(&own, scene.rules.widest_m);
+    let within_s = rule.within_s(scene.policy.time_sigma_s);
     let mut clashes: Vec<VersionPair> = (0..versions.len())
         .into_par_iter()
         .flat_map_iter(|i| {
-            let (version, own) = (&versions[i], &own[i]);
+            let version = &versions[i];
             let mut shifts: Vec<(VersionRef, (f64, f64))> = Vec::new();
-            let filed = |owner| Some(scene.filed(FlightId(owner)));
-            reach.visit(version, own, &scene.index, filed, |_, other, shift| {
-                shifts.push((VersionRef::Filed(other), shift));
-            });
-            // Of two changed versions the pair is looked at with the smaller flight.
-            let changed = |owner: u32| {
-                Some(versions[owner as usize]).filter(|other| version.flight < other.flight)
-            };
-            reach.visit(version, own, &index, changed, |owner, _, shift| {
-                shifts.push((VersionRef::Changed(owner as usize), shift));
-            });
+            for leg in &own[i] {
+                let others = |owner| FlightId(owner) != version.flight;
+                visit_shifts(leg, &scene.index, within_s, others, |owner, shift_s| {
+                    shifts.push((VersionRef::Filed(FlightId(owner)), shift_s));
+                });
+                // Of two changed versions the pair is looked at with the smaller flight.
+                let later = |owner: u32| version.flight < versions[owner as usize].flight;
+                visit_shifts(leg, &index, within_s, later, |owner, shift_s| {
+                    shifts.push((VersionRef::Changed(owner as usize), shift_s));
+                });
+            }
             shifts.sort_by_key(|(other, _)| *other);
             let mut clashes = Vec::new();
             for group in shifts.chunk_by(|x, y| x.0 == y.0) {

@@ -1,19 +1,19 @@
 //! Losses of changed versions: of one against the filed day, and which versions exclude each other.
 //!
-//! A changed version is cut into segments like the filed day. From its first changed piece on, or
-//! only up to the last one where nothing after it moves in time, it is swept against the filed
-//! segments and those of other changed versions of the same slice. What it shares with its filed
-//! version needs no second look: a loss there is that of the filed version.
+//! A changed version is cut into legs like the filed day. Those from its first changed piece on, or
+//! only up to the last one where nothing after it moves in time, are held against the filed legs
+//! and those of other changed versions. What it shares with its filed version needs no second
+//! look: a loss there is that of the filed version.
 
 use rayon::prelude::*;
 
 use super::index::Index;
 use super::known::{is_new, new_losses};
+use super::leg::Leg;
 use super::minima::Minimum;
 use super::moved::sort_losses;
-use super::pair::Breach;
-use super::scene::{Scene, Version, joined, loss};
-use super::segment::{SLICE_S, Segment, segments, slice_of};
+use super::parts::{Parts, owned_by};
+use super::scene::{Found, Scene, Version, joined, loss, sort};
 use crate::answer::Loss;
 use crate::ids::FlightId;
 
@@ -39,7 +39,7 @@ pub struct VersionPair {
 /// each, the first flight is the one with the smaller id.
 #[must_use]
 pub fn losses_against_filed(scene: &Scene, version: &Version<'_>) -> Vec<Loss> {
-    against_filed(scene, version, Minimum::Plain, 0, f64::INFINITY)
+    against_filed(scene, version, Minimum::Plain, scene.legs(version).into_iter())
 }
 
 /// The new losses of one changed version against all other flights as filed, decided like
@@ -47,8 +47,8 @@ pub fn losses_against_filed(scene: &Scene, version: &Version<'_>) -> Vec<Loss> {
 #[must_use]
 pub fn new_losses_against_filed(scene: &Scene, version: &Version<'_>) -> Vec<Loss> {
     let Some(part) = ChangedPart::of(version) else { return Vec::new() };
-    let first_piece = part.whole_slice_from(version);
-    let found = against_filed(scene, version, Minimum::Wider, first_piece, part.until_s);
+    let parts = Parts::of(scene, version);
+    let found = against_filed(scene, version, Minimum::Wider, parts.differing());
     let (mut new, mut others) = (Vec::new(), Vec::new());
     for loss in found {
         let other = if loss.first == version.flight { loss.second } else { loss.first };
@@ -68,27 +68,24 @@ pub fn new_losses_against_filed(scene: &Scene, version: &Version<'_>) -> Vec<Los
     new
 }
 
-pub(super) fn against_filed(
+fn against_filed(
     scene: &Scene,
     version: &Version<'_>,
     minimum: Minimum,
-    first_piece: usize,
-    until_s: f64,
+    legs: impl Iterator<Item = Leg>,
 ) -> Vec<Loss> {
-    let own = segments(0, &scene.course(version), &scene.rules, first_piece, until_s);
-    let mut found: Vec<(FlightId, FlightId, Breach)> = Vec::new();
-    for (number, segment) in &own {
-        let Some(slice) = scene.index.slice(*number) else { continue };
-        slice.near(&segment.bounds, |other| {
+    let mut found: Vec<Found<FlightId>> = Vec::new();
+    for leg in legs {
+        scene.index.near(&leg, (leg.from_s, leg.until_s), |other| {
             let other_id = FlightId(other.owner);
             if other_id == version.flight {
                 return;
             }
-            let Some(within) = segment.common_time(other) else { return };
+            let Some(within) = leg.near_time(other) else { return };
             let (first, pieces) = if version.flight < other_id {
-                (version.flight, [segment.piece as usize, other.piece as usize])
+                (version.flight, [leg.piece as usize, other.piece as usize])
             } else {
-                (other_id, [other.piece as usize, segment.piece as usize])
+                (other_id, [other.piece as usize, leg.piece as usize])
             };
             let pair = scene.pair(version, &scene.filed(other_id), minimum);
             let second = version.flight.max(other_id);
@@ -98,10 +95,6 @@ pub(super) fn against_filed(
     }
     sort(&mut found);
     joined(&found).map(|(first, second, breach)| loss(first, second, &breach)).collect()
-}
-
-pub(super) fn sort<K: Ord + Copy>(found: &mut [(K, K, Breach)]) {
-    found.sort_by(|x, y| (x.0, x.1).cmp(&(y.0, y.1)).then(x.2.from_s.total_cmp(&y.2.from_s)));
 }
 
 /// The part of a version that is not as filed in place, level and time.
@@ -124,11 +117,6 @@ impl ChangedPart {
         Some(Self { from_s, until_s })
     }
 
-    /// The piece that holds the start of the slice in which the part begins.
-    fn whole_slice_from(&self, version: &Version<'_>) -> usize {
-        version.path.piece_at(slice_of(self.from_s) as f64 * SLICE_S)
-    }
-
     /// Whether a loss lies partly in the part and may reach beyond it.
     fn cuts(&self, loss: &Loss) -> bool {
         !self.excludes(loss) && (loss.from_s <= self.from_s || loss.until_s >= self.until_s)
@@ -147,7 +135,7 @@ pub(super) fn flight_of(version: VersionRef, versions: &[Version<'_>]) -> Flight
     }
 }
 
-/// Sweeps changed versions against the filed day and each other.
+/// Holds changed versions against the filed day and each other.
 pub(super) struct Sweep<'a> {
     pub(super) scene: &'a Scene,
     pub(super) versions: &'a [Version<'a>],
@@ -155,49 +143,42 @@ pub(super) struct Sweep<'a> {
 }
 
 impl<'a> Sweep<'a> {
-    /// Breaches of indexed versions, with filed flights that pass a test and among themselves.
+    /// Breaches of indexed versions, with filed flights that pass a test and among themselves,
+    /// sorted.
     pub(super) fn breaches(
         &self,
         index: &Index,
         with_filed: impl Fn(FlightId) -> bool + Sync,
-    ) -> Vec<(VersionRef, VersionRef, Breach)> {
-        let numbered = index.slices().par_iter().enumerate();
-        numbered
-            .flat_map_iter(|(i, slice)| {
-                let mut found = Vec::new();
-                slice.pairs(|one, other| {
-                    let refs = [one, other].map(|s| VersionRef::Changed(s.owner as usize));
-                    self.test([one, other], refs, &mut found);
-                });
-                if let Some(filed) = self.scene.index.slice(index.first() + i as i64) {
-                    for one in slice.segments() {
-                        filed.near(&one.bounds, |other| {
-                            let flight = FlightId(other.owner);
-                            if with_filed(flight) {
-                                let changed = VersionRef::Changed(one.owner as usize);
-                                let refs = [changed, VersionRef::Filed(flight)];
-                                self.test([one, other], refs, &mut found);
-                            }
-                        });
+    ) -> Vec<Found<VersionRef>> {
+        let (mut found, _) = index.pairs(|one, other, found| {
+            let refs = [one, other].map(|leg| VersionRef::Changed(leg.owner as usize));
+            self.test([one, other], refs, found);
+        });
+        let against_filed = (0..self.versions.len()).into_par_iter().flat_map_iter(|i| {
+            let mut found = Vec::new();
+            for leg in index.legs_of(i as u32) {
+                self.scene.index.near(leg, (leg.from_s, leg.until_s), |other| {
+                    let flight = FlightId(other.owner);
+                    if with_filed(flight) {
+                        let refs = [VersionRef::Changed(i), VersionRef::Filed(flight)];
+                        self.test([leg, other], refs, &mut found);
                     }
-                }
-                found
-            })
-            .collect()
+                });
+            }
+            found
+        });
+        found.par_extend(against_filed);
+        sort(&mut found);
+        found
     }
 
-    fn test(
-        &self,
-        segments: [&Segment; 2],
-        refs: [VersionRef; 2],
-        found: &mut Vec<(VersionRef, VersionRef, Breach)>,
-    ) {
+    fn test(&self, legs: [&Leg; 2], refs: [VersionRef; 2], found: &mut Vec<Found<VersionRef>>) {
         let [one, other] = refs.map(|r| self.version(r));
         if one.flight == other.flight {
             return;
         }
-        let Some(within) = segments[0].common_time(segments[1]) else { return };
-        let mut pieces = segments.map(|s| s.piece as usize);
+        let Some(within) = legs[0].near_time(legs[1]) else { return };
+        let mut pieces = legs.map(|leg| leg.piece as usize);
         let mut ordered = refs;
         if one.flight > other.flight {
             pieces.reverse();
@@ -220,22 +201,15 @@ impl<'a> Sweep<'a> {
 #[must_use]
 pub fn clashes(scene: &Scene, versions: &[Version<'_>]) -> Vec<VersionPair> {
     let parts: Vec<Option<ChangedPart>> = versions.iter().map(ChangedPart::of).collect();
-    let own: Vec<Vec<(i64, Segment)>> = (0..versions.len())
+    let own: Vec<Vec<Leg>> = (0..versions.len())
         .into_par_iter()
-        .map(|i| {
-            let (version, Some(part)) = (&versions[i], parts[i]) else { return Vec::new() };
-            let first_piece = part.whole_slice_from(version);
-            segments(i as u32, &scene.course(version), &scene.rules, first_piece, part.until_s)
-        })
+        .map(|i| owned_by(i, Parts::of(scene, &versions[i]).differing()))
         .collect();
     let sweep = Sweep { scene, versions, minimum: Minimum::Wider };
-    let mut found = sweep.breaches(&Index::new(&own), |_| true);
-    found.par_sort_unstable_by(|x, y| {
-        (x.0, x.1).cmp(&(y.0, y.1)).then(x.2.from_s.total_cmp(&y.2.from_s))
-    });
-    let found: Vec<(VersionRef, VersionRef, Breach)> = joined(&found).collect();
+    let found = sweep.breaches(&Index::new(&own, scene.rules.widest_m), |_| true);
+    let found: Vec<Found<VersionRef>> = joined(&found).collect();
 
-    let mut pairs: Vec<&[(VersionRef, VersionRef, Breach)]> =
+    let mut pairs: Vec<&[Found<VersionRef>]> =
         found.chunk_by(|x, y| x.0 == y.0 && x.1 == y.1).collect();
     let judge = Judge { sweep: &sweep, parts: &parts, by_flight: ByFlight::new(versions) };
     let mut clashes: Vec<VersionPair> =
@@ -274,7 +248,7 @@ struct Judge<'a> {
 impl Judge<'_> {
     /// The clashes that follow from what was found for one pair of versions: of the pair, and of
     /// the versions that are as their filed one throughout a new loss with it.
-    fn clashes(&self, found: &[(VersionRef, VersionRef, Breach)]) -> Vec<VersionPair> {
+    fn clashes(&self, found: &[Found<VersionRef>]) -> Vec<VersionPair> {
         let Some(&(a, b, _)) = found.first() else { return Vec::new() };
         let new = self.new_losses(a, b, found);
         let mut clashes = Vec::new();
@@ -293,12 +267,7 @@ impl Judge<'_> {
         clashes
     }
 
-    fn new_losses(
-        &self,
-        a: VersionRef,
-        b: VersionRef,
-        found: &[(VersionRef, VersionRef, Breach)],
-    ) -> Vec<Loss> {
+    fn new_losses(&self, a: VersionRef, b: VersionRef, found: &[Found<VersionRef>]) -> Vec<Loss> {
         let scene = self.sweep.scene;
         let (one, other) = (self.sweep.version(a), self.sweep.version(b));
         let losses: Vec<Loss> =
@@ -322,7 +291,7 @@ impl Judge<'_> {
     /// Carries what was found against a filed flight over to the changed versions of that flight.
     fn share(
         &self,
-        found: &[(VersionRef, VersionRef, Breach)],
+        found: &[Found<VersionRef>],
         new: &[Loss],
         flight: FlightId,
         pair: impl Fn(usize) -> (VersionRef, VersionRef),

@@ -2,8 +2,11 @@
 
 use super::*;
 use crate::path::Path;
+use crate::separation::crossing::shifts;
+use crate::separation::leg::push_legs;
+use crate::separation::minima::{Rules, limit_vertical_ft};
 use crate::separation::{
-    Version, expected_new_losses, pair_losses, pair_probability, pair_risks, shift_set,
+    ShiftSet, Version, expected_new_losses, pair_losses, pair_probability, pair_risks, shift_set,
 };
 use crate::units::kt_to_mps;
 
@@ -184,11 +187,57 @@ fn risks_are_those_of_every_pair() {
         let filed_p = pair_probability(&scene, &scene.filed(a), &scene.filed(b));
         let planned_p = pair_probability(&scene, &planned(a), &planned(b));
         expected += (planned_p - filed_p).max(0.0);
-        let (x, y) = found.map_or((0.0, 0.0), |r| (r.filed, r.planned));
+        // A pair that is left out is as it was.
+        let (x, y) = found.map_or((filed_p, filed_p), |r| (r.filed, r.planned));
         assert!((x - filed_p).abs() < 1e-9 && (y - planned_p).abs() < 1e-9, "{a:?} {b:?}");
     }
     let found = expected_new_losses(&scene, &moved);
     assert!((found - expected).abs() < 1e-6 && expected > 1.0, "{found}, not {expected}");
+}
+
+/// The shifts of two filed flights, from every two pieces of their tracks, at a minimum of a little
+/// more or less.
+fn shifts_of_pieces(scene: &Scene, pair: (u32, u32), more_m: f32) -> ShiftSet {
+    let rules = Rules { deepest_m: 0.0, chord_m: scene.rules.chord_m + more_m, ..scene.rules };
+    let legs = |flight: u32| {
+        let course = scene.course(&scene.filed(FlightId(flight)));
+        let mut legs = Vec::new();
+        push_legs(flight, &course, &rules, 0..course.path.len() - 1, &mut legs);
+        legs
+    };
+    let (a_legs, b_legs) = (legs(pair.0), legs(pair.1));
+    let mut found = Vec::new();
+    for (a, b) in a_legs.iter().flat_map(|a| b_legs.iter().map(move |b| (a, b))) {
+        let limit_ft = limit_vertical_ft([a.class_ft(), b.class_ft()], [a.rvsm, b.rvsm]);
+        found.extend(shifts(a, b, f64::from(rules.chord_m), limit_ft));
+    }
+    ShiftSet::union(found)
+}
+
+/// Pieces taken together as one leg change no minimum by more than half a metre.
+#[test]
+fn a_set_of_legs_lies_between_those_of_their_pieces() {
+    let always = (f64::NEG_INFINITY, f64::INFINITY);
+    let inside = |one: &ShiftSet, other: &ShiftSet| {
+        one.intervals()
+            .iter()
+            .all(|i| other.intervals().iter().any(|o| o.0 <= i.0 + 1e-4 && i.1 <= o.1 + 1e-4))
+    };
+    let mut counted = 0;
+    for (i, centre) in CENTRES.into_iter().enumerate() {
+        let day = day_of(crowd(60, centre, 190 + i as u64), Policy::default());
+        let scene = scene_of(&day);
+        let pieces: usize = tracks_of(&day).iter().map(|t| t.knots().len() - 1).sum();
+        assert!(scene.index.len() * 3 < pieces * 2, "too few pieces are taken together");
+        for (a, b) in (0..60).flat_map(|a| (a + 1..60).map(move |b| (a, b))) {
+            let set =
+                shift_set(&scene, &scene.filed(FlightId(a)), &scene.filed(FlightId(b)), always);
+            let [narrow, wide] = [-0.5, 0.5].map(|more_m| shifts_of_pieces(&scene, (a, b), more_m));
+            assert!(inside(&narrow, &set) && inside(&set, &wide), "{narrow:?} {set:?} {wide:?}");
+            counted += set.intervals().len();
+        }
+    }
+    assert!(counted > 300, "{counted}");
 }
 
 #[test]
