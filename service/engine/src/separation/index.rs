@@ -10,13 +10,22 @@ use std::ops::Range;
 use rayon::prelude::*;
 
 use super::leg::{LONGEST_S, Leg};
-use super::reach::{Bounds, Reach};
+use super::reach::{Ball, Reach, blocked_ft};
+
+/// Owners whose legs are cut together.
+const CHUNK: usize = 256;
+/// Times in entries are counted from this on, seconds: times are within three days of the date, and
+/// later or earlier ones, which a changed profile may reach, are taken as the last or first.
+const EARLIEST_S: f64 = -2_000_000.0;
+/// Steps of times in entries, a second.
+const STEPS: f64 = 1024.0;
+/// Unit of durations in entries, in steps: two seconds.
+const LASTS_STEPS: u32 = 2048;
 
 /// Legs of versions, numbered by owner and time.
 #[derive(Debug, Clone, Default)]
 pub(super) struct Index {
     legs: Vec<Leg>,
-    bounds: Vec<Bounds>,
     /// Where the legs of each owner start; one more at the end.
     starts: Vec<u32>,
     grid: Grid,
@@ -26,8 +35,40 @@ pub(super) struct Index {
     widest_m: f32,
 }
 
-/// A leg in a list: its start, as bits that sort like it, above its number.
-type Entry = u64;
+/// A leg in a list, with what most questions need of it: lists are read in sequence, legs at random.
+#[derive(Debug, Clone, Copy, PartialEq)]
+struct Entry {
+    /// Its start above its number.
+    key: u64,
+    /// A packed ball around it, and below that how long it lasts.
+    ball: u64,
+}
+
+/// A time in steps, rounded down.
+fn steps(time_s: f64) -> u32 {
+    ((time_s - EARLIEST_S) * STEPS) as u32
+}
+
+impl Entry {
+    fn new(leg: &Leg, number: usize, cell: [i32; 3]) -> Self {
+        let from = steps(leg.from_s);
+        let lasts = (steps(leg.until_s) - from) / LASTS_STEPS + 1;
+        let ball = Ball::packed(leg, cell) | u64::from(lasts.min(255));
+        Self { key: u64::from(from) << 32 | number as u64, ball }
+    }
+
+    fn leg(self) -> usize {
+        self.key as u32 as usize
+    }
+
+    fn from(self) -> u32 {
+        (self.key >> 32) as u32
+    }
+
+    fn until(self) -> u32 {
+        self.from().saturating_add(self.ball as u8 as u32 * LASTS_STEPS)
+    }
+}
 
 /// Dense numbers for the cells that hold anything.
 #[derive(Debug, Clone, Default)]
@@ -64,81 +105,130 @@ impl Grid {
         let slots = last_slot - first_slot + 1;
         let mut grid = Self { first: low, counts, cells, used: 0, first_slot, slots };
         for reach in reaches {
-            for cell in cells_of(reach.low, reach.high) {
-                let number = &mut grid.cells[position(grid.first, grid.counts, cell)];
-                if *number == EMPTY {
-                    *number = grid.used;
+            each_cell(reach.low, reach.high, |cell| {
+                let position = grid.position(cell);
+                if grid.cells[position] == EMPTY {
+                    grid.cells[position] = grid.used;
                     grid.used += 1;
                 }
-            }
+            });
         }
         grid
     }
 
-    /// The lists of a cell that lie in slots, with the first of these slots.
-    fn lists(&self, cell: [i32; 3], slots: (i32, i32)) -> Option<(Range<usize>, i32)> {
-        let number = self.cells[position(self.first, self.counts, cell)];
-        let first = slots.0.max(self.first_slot);
-        let last = slots.1.min(self.first_slot + self.slots - 1);
-        (number != EMPTY && first <= last).then(|| {
-            let start = number as usize * self.slots as usize + (first - self.first_slot) as usize;
-            (start..start + (last - first + 1) as usize, first)
-        })
+    fn position(&self, cell: [i32; 3]) -> usize {
+        let at = |k: usize| (cell[k] - self.first[k]) as usize;
+        (at(0) * self.counts[1] as usize + at(1)) * self.counts[2] as usize + at(2)
     }
 
-    /// The part of a range of cells that lies in the grid.
-    fn clipped(&self, reach: &Reach) -> ([i32; 3], [i32; 3]) {
+    /// Calls `tell` with each list of the cells and slots of a reach, as far as there are any.
+    #[inline]
+    fn each_list(&self, reach: &Reach, mut tell: impl FnMut([i32; 3], i32, usize)) {
         let low = std::array::from_fn(|k| reach.low[k].max(self.first[k]));
         let high = std::array::from_fn(|k| reach.high[k].min(self.first[k] + self.counts[k] - 1));
-        (low, high)
+        let first = reach.slots.0.max(self.first_slot);
+        let last = reach.slots.1.min(self.first_slot + self.slots - 1);
+        each_cell(low, high, |cell| {
+            let number = self.cells[self.position(cell)];
+            if number != EMPTY {
+                let before = number as usize * self.slots as usize;
+                for slot in first..=last {
+                    tell(cell, slot, before + (slot - self.first_slot) as usize);
+                }
+            }
+        });
+    }
+
+    fn used_cells(&self) -> Vec<([i32; 3], usize)> {
+        let high = std::array::from_fn(|k| self.first[k] + self.counts[k] - 1);
+        let mut used = Vec::with_capacity(self.used as usize);
+        each_cell(self.first, high, |cell| {
+            let number = self.cells[self.position(cell)];
+            if number != EMPTY {
+                used.push((cell, number as usize));
+            }
+        });
+        used
     }
 }
 
-fn position(first: [i32; 3], counts: [i32; 3], cell: [i32; 3]) -> usize {
-    let at = |k: usize| (cell[k] - first[k]) as usize;
-    (at(0) * counts[1] as usize + at(1)) * counts[2] as usize + at(2)
+#[inline]
+fn each_cell(low: [i32; 3], high: [i32; 3], mut tell: impl FnMut([i32; 3])) {
+    for x in low[0]..=high[0] {
+        for y in low[1]..=high[1] {
+            for z in low[2]..=high[2] {
+                tell([x, y, z]);
+            }
+        }
+    }
 }
 
-fn cells_of(low: [i32; 3], high: [i32; 3]) -> impl Iterator<Item = [i32; 3]> {
-    (low[0]..=high[0]).flat_map(move |x| {
-        (low[1]..=high[1]).flat_map(move |y| (low[2]..=high[2]).map(move |z| [x, y, z]))
-    })
+/// The legs of consecutive owners.
+#[derive(Default)]
+struct Cut {
+    legs: Vec<Leg>,
+    reaches: Vec<Reach>,
+    /// Number of legs of each owner.
+    counts: Vec<u32>,
 }
 
-/// Bits that sort like the number.
-fn sortable(x: f32) -> u32 {
-    let bits = x.to_bits();
-    if bits >> 31 == 0 { bits | 1 << 31 } else { !bits }
-}
-
-fn entry(from_s: f32, leg: usize) -> Entry {
-    u64::from(sortable(from_s)) << 32 | leg as u64
+impl Cut {
+    fn of(owners: Range<usize>, widest_m: f32, cut: impl Fn(usize, &mut Vec<Leg>)) -> Self {
+        let (mut legs, mut counts) = (Vec::new(), Vec::with_capacity(owners.len()));
+        for owner in owners {
+            let before = legs.len();
+            cut(owner, &mut legs);
+            counts.push((legs.len() - before) as u32);
+        }
+        let reaches = legs.iter().map(|leg| Reach::of(leg, widest_m)).collect();
+        Self { legs, reaches, counts }
+    }
 }
 
 impl Index {
-    /// Indexes the legs of owners numbered from 0 on; no horizontal minimum of theirs, or of what
-    /// they are compared with, is larger than `widest_m`.
-    pub(super) fn new(by_owner: &[Vec<Leg>], widest_m: f32) -> Self {
-        let mut starts = Vec::with_capacity(by_owner.len() + 1);
-        let mut legs = Vec::with_capacity(by_owner.iter().map(Vec::len).sum());
-        for own in by_owner {
-            starts.push(legs.len() as u32);
-            legs.extend_from_slice(own);
+    /// Indexes the legs of owners numbered from 0 on, which `cut` appends; no horizontal minimum of
+    /// theirs, or of what they are compared with, is larger than `widest_m`.
+    pub(super) fn new(
+        owners: usize,
+        widest_m: f32,
+        cut: impl Fn(usize, &mut Vec<Leg>) + Sync,
+    ) -> Self {
+        let chunks = owners.div_ceil(CHUNK);
+        let chunk = |i: usize| i * CHUNK..owners.min((i + 1) * CHUNK);
+        let cuts: Vec<Cut> = match chunks {
+            0 => return Self::default(),
+            1 => vec![Cut::of(chunk(0), widest_m, cut)],
+            _ => (0..chunks).into_par_iter().map(|i| Cut::of(chunk(i), widest_m, &cut)).collect(),
+        };
+        let total: usize = cuts.iter().map(|cut| cut.legs.len()).sum();
+        let mut cuts = cuts.into_iter();
+        let mut all = cuts.next().unwrap_or_default();
+        all.legs.reserve_exact(total - all.legs.len());
+        all.reaches.reserve_exact(total - all.reaches.len());
+        for cut in cuts {
+            all.legs.extend_from_slice(&cut.legs);
+            all.reaches.extend_from_slice(&cut.reaches);
+            all.counts.extend_from_slice(&cut.counts);
         }
-        starts.push(legs.len() as u32);
-        let bounds: Vec<Bounds> = legs.par_iter().map(Bounds::of).collect();
-        let reaches: Vec<Reach> =
-            (&legs, &bounds).into_par_iter().map(|(l, b)| Reach::of(l, b, widest_m)).collect();
-        let grid = Grid::around(&reaches);
-        let (lists, entries) = fill(&grid, &bounds, &reaches);
-        Self { legs, bounds, starts, grid, lists, entries, widest_m }
+        let mut starts = Vec::with_capacity(owners + 1);
+        let mut next = 0;
+        starts.push(0);
+        starts.extend(all.counts.iter().map(|count| {
+            next += count;
+            next
+        }));
+        let grid = Grid::around(&all.reaches);
+        let (lists, entries) = fill(&grid, &all.legs, &all.reaches);
+        Self { legs: all.legs, starts, grid, lists, entries, widest_m }
     }
 
     /// The legs of an owner, in order of time.
     pub(super) fn legs_of(&self, owner: u32) -> &[Leg] {
-        let at = |i: usize| self.starts.get(i).copied().unwrap_or(0) as usize;
         let owner = owner as usize;
-        if owner + 1 < self.starts.len() { &self.legs[at(owner)..at(owner + 1)] } else { &[] }
+        match self.starts.get(owner..owner + 2) {
+            Some(&[start, end]) => &self.legs[start as usize..end as usize],
+            _ => &[],
+        }
     }
 
     /// Number of owners.
@@ -151,64 +241,60 @@ impl Index {
         self.legs.len()
     }
 
-    /// Every leg whose time meets a period (and few others), and whose bounds meet those of a leg
-    /// at whatever time that is flown, each once.
+    /// Every leg whose time meets a period (and few others), and whose ball and levels meet those
+    /// of a leg at whatever time that is flown, each once.
+    #[inline]
     pub(super) fn near(&self, leg: &Leg, period_s: (f64, f64), mut visit: impl FnMut(&Leg)) {
         if self.legs.is_empty() {
             return;
         }
-        let bounds = Bounds::of(leg);
-        let reach = Reach::of(leg, &bounds, self.widest_m);
-        let (low, high) = self.grid.clipped(&reach);
-        let [earliest, from, until] =
-            [period_s.0 - LONGEST_S, period_s.0, period_s.1].map(|s| s as f32);
-        let (earliest, from, until) =
-            (earliest.next_down().next_down(), from.next_down(), until.next_up());
-        for cell in cells_of(low, high) {
-            let Some((lists, first_slot)) = self.grid.lists(cell, reach.slots) else { continue };
-            for (slot, list) in (first_slot..).zip(lists) {
-                let entries = self.list(list);
-                let start = entries.partition_point(|&e| e < entry(earliest, 0));
-                for &e in &entries[start..] {
-                    let number = e as u32 as usize;
-                    let other = &self.bounds[number];
-                    if other.from_s > until {
-                        break;
-                    }
-                    if other.until_s < from || !bounds.meets(other, self.widest_m) {
-                        continue;
-                    }
-                    let other_leg = &self.legs[number];
-                    let other_reach = Reach::of(other_leg, other, self.widest_m);
-                    if reach.first_shared(&other_reach, cell, slot) {
-                        visit(other_leg);
-                    }
+        let reach = Reach::of(leg, self.widest_m);
+        let blocked = blocked_ft(leg);
+        let earliest = u64::from(steps(period_s.0 - LONGEST_S).saturating_sub(1)) << 32;
+        let (from, until) = (steps(period_s.0), steps(period_s.1));
+        self.grid.each_list(&reach, |cell, slot, list| {
+            let entries = self.list(list);
+            let start = entries.partition_point(|e| e.key < earliest);
+            let mut own = None;
+            for &entry in entries[start..].iter().take_while(|e| e.from() <= until) {
+                let own = *own.get_or_insert_with(|| {
+                    Ball::unpacked(Ball::packed(leg, cell)).widened(self.widest_m)
+                });
+                if !own.meets(&Ball::unpacked(entry.ball)) || entry.until() < from {
+                    continue;
+                }
+                let other = &self.legs[entry.leg()];
+                if meet(blocked, blocked_ft(other))
+                    && reach.first_shared(&Reach::of(other, self.widest_m), cell, slot)
+                {
+                    visit(other);
                 }
             }
-        }
+        });
     }
 
-    /// Every pair of legs that meet in time and whose bounds meet, each once, told in parallel by
-    /// cell; what is found is in no particular order. `count` is told how many pairs met in time.
+    /// Every pair of legs of two owners that meet in time and whose balls and levels meet, each
+    /// once. What is found is in an order that depends on the legs alone. Also how many pairs met
+    /// in a list.
     pub(super) fn pairs<T: Send>(
         &self,
         tell: impl Fn(&Leg, &Leg, &mut Vec<T>) + Sync,
     ) -> (Vec<T>, u64) {
-        let cells: Vec<([i32; 3], u32)> = self.used_cells();
-        let found: Vec<(Vec<T>, u64)> = cells
-            .par_iter()
-            .with_min_len(16)
-            .fold(
-                || (Vec::new(), 0),
-                |mut found, &(cell, number)| {
+        let found: Vec<(Vec<T>, u64)> = self
+            .grid
+            .used_cells()
+            .par_chunks(16)
+            .map(|cells| {
+                let (mut found, mut count) = (Vec::new(), 0);
+                for &(cell, number) in cells {
                     let slots = self.grid.slots as usize;
-                    let first = number as usize * slots;
-                    for (slot, list) in (self.grid.first_slot..).zip(first..first + slots) {
-                        found.1 += self.pairs_in(cell, slot, list, &tell, &mut found.0);
+                    let lists = number * slots..(number + 1) * slots;
+                    for (slot, list) in (self.grid.first_slot..).zip(lists) {
+                        count += self.pairs_in(cell, slot, list, &tell, &mut found);
                     }
-                    found
-                },
-            )
+                }
+                (found, count)
+            })
             .collect();
         let count = found.iter().map(|(_, n)| n).sum();
         (found.into_iter().flat_map(|(found, _)| found).collect(), count)
@@ -224,22 +310,23 @@ impl Index {
     ) -> u64 {
         let entries = self.list(list);
         let mut count = 0;
-        for (i, &e) in entries.iter().enumerate() {
-            let number = e as u32 as usize;
-            let bounds = &self.bounds[number];
-            // All that begin before this one ends.
-            let end = entry(bounds.until_s.next_up(), 0);
-            for &later in entries[i + 1..].iter().take_while(|&&later| later < end) {
+        for (i, &entry) in entries.iter().enumerate() {
+            let ball = Ball::unpacked(entry.ball).widened(self.widest_m);
+            let until = entry.until();
+            for &later in entries[i + 1..].iter().take_while(|e| e.from() <= until) {
                 count += 1;
-                let other_number = later as u32 as usize;
-                let other_bounds = &self.bounds[other_number];
-                if !bounds.meets(other_bounds, self.widest_m) {
+                if !ball.meets(&Ball::unpacked(later.ball)) {
                     continue;
                 }
-                let (leg, other) = (&self.legs[number], &self.legs[other_number]);
-                let reach = Reach::of(leg, bounds, self.widest_m);
-                let other_reach = Reach::of(other, other_bounds, self.widest_m);
-                if leg.owner != other.owner && reach.first_shared(&other_reach, cell, slot) {
+                let (leg, other) = (&self.legs[entry.leg()], &self.legs[later.leg()]);
+                if leg.owner != other.owner
+                    && meet(blocked_ft(leg), blocked_ft(other))
+                    && Reach::of(leg, self.widest_m).first_shared(
+                        &Reach::of(other, self.widest_m),
+                        cell,
+                        slot,
+                    )
+                {
                     tell(leg, other, found);
                 }
             }
@@ -250,51 +337,56 @@ impl Index {
     fn list(&self, list: usize) -> &[Entry] {
         &self.entries[self.lists[list] as usize..self.lists[list + 1] as usize]
     }
+}
 
-    fn used_cells(&self) -> Vec<([i32; 3], u32)> {
-        let Grid { first, counts, cells, .. } = &self.grid;
-        let high = std::array::from_fn(|k| first[k] + counts[k] - 1);
-        let numbered = cells_of(*first, high).zip(cells.iter().copied());
-        numbered.filter(|&(_, number)| number != EMPTY).collect()
-    }
+/// Whether two open intervals overlap.
+fn meet(one: (f64, f64), other: (f64, f64)) -> bool {
+    one.0 < other.1 && other.0 < one.1
 }
 
 /// Sorts legs into lists.
-fn fill(grid: &Grid, bounds: &[Bounds], reaches: &[Reach]) -> (Vec<u32>, Vec<Entry>) {
+fn fill(grid: &Grid, legs: &[Leg], reaches: &[Reach]) -> (Vec<u32>, Vec<Entry>) {
     let mut lists = vec![0_u32; grid.used as usize * grid.slots as usize + 1];
-    let lists_of = |reach: &Reach| {
-        let slots = reach.slots;
-        let cells = cells_of(reach.low, reach.high);
-        cells.filter_map(move |cell| grid.lists(cell, slots)).flat_map(|(lists, _)| lists)
-    };
     for reach in reaches {
-        for list in lists_of(reach) {
-            lists[list + 1] += 1;
-        }
+        grid.each_list(reach, |_, _, list| lists[list + 1] += 1);
     }
     for list in 1..lists.len() {
         lists[list] += lists[list - 1];
     }
     let total = lists.last().map_or(0, |&n| n as usize);
-    let mut entries = vec![0; total];
+    let mut entries = vec![Entry { key: 0, ball: 0 }; total];
     let mut next = lists.clone();
-    for (number, (reach, bounds)) in reaches.iter().zip(bounds).enumerate() {
-        for list in lists_of(reach) {
-            entries[next[list] as usize] = entry(bounds.from_s, number);
+    for (number, (reach, leg)) in reaches.iter().zip(legs).enumerate() {
+        let mut made: Option<([i32; 3], Entry)> = None;
+        grid.each_list(reach, |cell, _, list| {
+            let entry = match made {
+                Some((of, entry)) if of == cell => entry,
+                _ => Entry::new(leg, number, cell),
+            };
+            made = Some((cell, entry));
+            entries[next[list] as usize] = entry;
             next[list] += 1;
-        }
+        });
     }
     let mut rest = entries.as_mut_slice();
     let mut parts = Vec::with_capacity(grid.used as usize);
-    for cell in lists.windows(grid.slots.max(1) as usize + 1).step_by(grid.slots.max(1) as usize) {
-        let (part, after) = rest.split_at_mut((cell[cell.len() - 1] - cell[0]) as usize);
+    let slots = grid.slots.max(1) as usize;
+    for cell in lists.windows(slots + 1).step_by(slots) {
+        let (part, after) = rest.split_at_mut((cell[slots] - cell[0]) as usize);
         parts.push((cell, part));
         rest = after;
     }
-    parts.into_par_iter().for_each(|(cell, part)| {
+    let sort = |(cell, part): (&[u32], &mut [Entry])| {
         for list in cell.windows(2) {
-            part[(list[0] - cell[0]) as usize..(list[1] - cell[0]) as usize].sort_unstable();
+            let list = (list[0] - cell[0]) as usize..(list[1] - cell[0]) as usize;
+            part[list].sort_unstable_by_key(|entry| entry.key);
         }
-    });
+    };
+    // A few flights are not worth waking other threads.
+    if legs.len() < CHUNK * 32 {
+        parts.into_iter().for_each(sort);
+    } else {
+        parts.into_par_iter().with_min_len(16).for_each(sort);
+    }
     (lists, entries)
 }

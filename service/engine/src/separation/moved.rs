@@ -1,7 +1,5 @@
 //! Losses of a day in which a plan has moved some flights.
 
-use rayon::prelude::*;
-
 use super::index::Index;
 use super::known::is_new;
 use super::minima::Minimum;
@@ -24,13 +22,12 @@ impl MovedIndex {
     /// Indexes one version each of some flights.
     #[must_use]
     pub fn new(scene: &Scene, moved: &[Version<'_>]) -> Self {
-        let own: Vec<_> = (0..moved.len())
-            .into_par_iter()
-            .map(|i| owned_by(i, Parts::of(scene, &moved[i]).all()))
-            .collect();
+        let index = Index::new(moved.len(), scene.rules.widest_m, |i, legs| {
+            legs.extend(owned_by(i, Parts::of(scene, &moved[i]).all()));
+        });
         let mut flights: Vec<_> = moved.iter().enumerate().map(|(i, v)| (v.flight, i)).collect();
         flights.sort_unstable();
-        Self { index: Index::new(&own, scene.rules.widest_m), flights }
+        Self { index, flights }
     }
 
     /// Position of a flight in the list; `None` if it is not moved.

@@ -89,6 +89,6 @@ impl<'a> Parts<'a> {
 }
 
 /// Gives legs another owner.
-pub(super) fn owned_by(owner: usize, legs: impl Iterator<Item = Leg>) -> Vec<Leg> {
-    legs.map(|leg| Leg { owner: owner as u32, ..leg }).collect()
+pub(super) fn owned_by(owner: usize, legs: impl Iterator<Item = Leg>) -> impl Iterator<Item = Leg> {
+    legs.map(move |leg| Leg { owner: owner as u32, ..leg })
 }

@@ -83,6 +83,11 @@ pub fn pair_risks_in_plan(
 /// Expected new losses: the sum of what the moved flights add to the probabilities of pairs.
 #[must_use]
 pub fn expected_new_losses(scene: &Scene, moved: &[Version<'_>]) -> f64 {
+    // One flight alone needs no index of moved ones, and no other threads.
+    if let [version] = moved {
+        let alone = pair_risks_in_plan(scene, version, &[], &MovedIndex::default());
+        return alone.iter().map(PairRisk::added).sum();
+    }
     pair_risks(scene, moved).iter().map(PairRisk::added).sum()
 }
 

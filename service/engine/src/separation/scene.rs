@@ -60,17 +60,11 @@ impl Scene {
             index: Index::default(),
             losses: Vec::new(),
         };
-        let legs: Vec<Vec<Leg>> = (0..scene.tracks.len())
-            .into_par_iter()
-            .map(|i| {
-                let id = FlightId::from_index(i);
-                let course = scene.course(&scene.filed(id));
-                let mut legs = Vec::new();
-                push_legs(id.0, &course, &scene.rules, 0..course.path.len() - 1, &mut legs);
-                legs
-            })
-            .collect();
-        scene.index = Index::new(&legs, scene.rules.widest_m);
+        scene.index = Index::new(scene.tracks.len(), rules.widest_m, |owner, legs| {
+            let id = FlightId::from_index(owner);
+            let course = scene.course(&scene.filed(id));
+            push_legs(id.0, &course, &rules, 0..course.path.len() - 1, legs);
+        });
         scene.losses = filed_losses(&scene);
         scene
     }

@@ -4,7 +4,6 @@
 use rayon::prelude::*;
 
 use super::index::Index;
-use super::leg::Leg;
 use super::parts::{Parts, owned_by};
 use super::risk::pair_probability;
 use super::scene::{Scene, Version};
@@ -98,18 +97,16 @@ fn tail_s(probability: f64, time_sigma_s: f64) -> f64 {
 /// uncertain times, in order.
 #[must_use]
 pub fn shift_clashes(scene: &Scene, versions: &[Version<'_>], rule: ShiftRule) -> Vec<VersionPair> {
-    let own: Vec<Vec<Leg>> = (0..versions.len())
-        .into_par_iter()
-        .map(|i| owned_by(i, Parts::of(scene, &versions[i]).all()))
-        .collect();
-    let index = Index::new(&own, scene.rules.widest_m);
+    let index = Index::new(versions.len(), scene.rules.widest_m, |i, legs| {
+        legs.extend(owned_by(i, Parts::of(scene, &versions[i]).all()));
+    });
     let within_s = rule.within_s(scene.policy.time_sigma_s);
     let mut clashes: Vec<VersionPair> = (0..versions.len())
         .into_par_iter()
         .flat_map_iter(|i| {
             let version = &versions[i];
             let mut shifts: Vec<(VersionRef, (f64, f64))> = Vec::new();
-            for leg in &own[i] {
+            for leg in index.legs_of(i as u32) {
                 let others = |owner| FlightId(owner) != version.flight;
                 visit_shifts(leg, &scene.index, within_s, others, |owner, shift_s| {
                     shifts.push((VersionRef::Filed(FlightId(owner)), shift_s));

@@ -8,7 +8,6 @@ use super::crossing::shifts;
 use super::index::Index;
 use super::leg::Leg;
 use super::minima::limit_vertical_ft;
-use super::reach::Bounds;
 use super::scene::{Scene, Version};
 
 /// Intervals this close to each other are one, seconds.
@@ -90,16 +89,8 @@ pub fn shift_set(
         return ShiftSet::default();
     }
     let [a_legs, b_legs] = [first, second].map(|version| scene.legs(version));
-    let b_bounds: Vec<Bounds> = b_legs.iter().map(Bounds::of).collect();
-    let mut found = Vec::new();
-    for one in &a_legs {
-        let bounds = Bounds::of(one);
-        for (other, other_bounds) in b_legs.iter().zip(&b_bounds) {
-            if bounds.meets(other_bounds, scene.rules.widest_m) {
-                found.extend(shifts_within(one, other, within_s));
-            }
-        }
-    }
+    let pairs = a_legs.iter().flat_map(|one| b_legs.iter().map(move |other| (one, other)));
+    let found = pairs.filter_map(|(one, other)| shifts_within(one, other, within_s)).collect();
     ShiftSet::union(found)
 }
 

@@ -201,12 +201,11 @@ impl<'a> Sweep<'a> {
 #[must_use]
 pub fn clashes(scene: &Scene, versions: &[Version<'_>]) -> Vec<VersionPair> {
     let parts: Vec<Option<ChangedPart>> = versions.iter().map(ChangedPart::of).collect();
-    let own: Vec<Vec<Leg>> = (0..versions.len())
-        .into_par_iter()
-        .map(|i| owned_by(i, Parts::of(scene, &versions[i]).differing()))
-        .collect();
+    let index = Index::new(versions.len(), scene.rules.widest_m, |i, legs| {
+        legs.extend(owned_by(i, Parts::of(scene, &versions[i]).differing()));
+    });
     let sweep = Sweep { scene, versions, minimum: Minimum::Wider };
-    let found = sweep.breaches(&Index::new(&own, scene.rules.widest_m), |_| true);
+    let found = sweep.breaches(&index, |_| true);
     let found: Vec<Found<VersionRef>> = joined(&found).collect();
 
     let mut pairs: Vec<&[Found<VersionRef>]> =
