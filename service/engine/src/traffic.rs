@@ -96,7 +96,7 @@ impl Traffic {
     #[must_use]
     pub fn changed_load(&self, flight: FlightId, changed: &Changed) -> FlightLoad {
         let path = self.path(flight, Some(changed));
-        self.sectors.flight_load(&path, self.flight(flight), &self.day)
+        self.sectors.changed_load(&path, self.flight(flight), &self.day, &self.filed[flight])
     }
 
     /// The horizontal minima on the way of a changed flight.

@@ -1,5 +1,7 @@
 //! What one version of one flight adds to the load of the day.
 
+use std::ops::Range;
+
 use super::index::SectorIndex;
 use super::piece::Piece;
 use crate::day::{Day, Flight, Policy};
@@ -56,15 +58,65 @@ impl SectorIndex {
         }
     }
 
+    /// What a changed version may be counted for, told from what its filed one is: only the pieces
+    /// that differ are cut; what comes after is only visited later.
+    #[must_use]
+    pub fn changed_load(
+        &self,
+        path: &Path<'_>,
+        flight: &Flight,
+        day: &Day,
+        filed: &FlightLoad,
+    ) -> FlightLoad {
+        let policy = &day.policy;
+        let Some(change) = path.change() else { return filed.clone() };
+        if policy.rejoin_s > 0.0 || policy.min_visit_s > 0.0 {
+            // The filed visits are no longer those of which such a policy made them.
+            return self.flight_load(path, flight, day);
+        }
+        let first = path.first_changed();
+        let from_s = path.knot(first).time_s;
+        let mut found = Vec::with_capacity(filed.visits.len() + 16);
+        found.extend(
+            filed
+                .visits
+                .iter()
+                .filter(|visit| visit.in_s < from_s)
+                .map(|visit| Visit { out_s: visit.out_s.min(from_s), ..*visit }),
+        );
+        let resumed = (change.kept + change.knots.len()).min(path.len() - 1);
+        self.push_inside(path, first..resumed, &mut found);
+        if let Some(knot) = path.track().knots().get(change.resume) {
+            let until_s = knot.time_s;
+            let after = filed.visits.iter().filter(|visit| visit.out_s > until_s);
+            found.extend(after.map(|visit| Visit {
+                in_s: visit.in_s.max(until_s) + change.shift_s,
+                out_s: visit.out_s + change.shift_s,
+                ..*visit
+            }));
+        }
+        FlightLoad {
+            visits: visits(maximal(found), policy),
+            level_changes: self.level_changes(path),
+            arrival: flight.arrives_at.map(|airport| (airport, path.end_s())),
+            departure: filed.departure,
+        }
+    }
+
     /// When a path is inside which sector, open or not: maximal intervals by sector, then time,
     /// before any policy on short visits.
     #[must_use]
     pub fn inside(&self, path: &Path<'_>) -> Vec<Visit> {
         let mut found = Vec::with_capacity(path.len() + 8);
+        self.push_inside(path, 0..path.len() - 1, &mut found);
+        maximal(found)
+    }
+
+    /// When some pieces of a path are inside which sector.
+    fn push_inside(&self, path: &Path<'_>, pieces: Range<usize>, found: &mut Vec<Visit>) {
         let (mut near, mut cuts) = (Vec::new(), Vec::new());
-        let mut knots = path.knots_from(0);
-        let Some(mut from) = knots.next() else { return found };
-        for until in knots {
+        let mut from = path.knot(pieces.start);
+        for until in path.knots_from(pieces.start + 1).take(pieces.len()) {
             let piece = Piece::new(&from, &until);
             for piece in [Some(piece), piece.turned()].into_iter().flatten() {
                 for ((sector, volume), cover) in self.near(&piece, &mut near) {
@@ -75,10 +127,6 @@ impl SectorIndex {
             }
             from = until;
         }
-        found.sort_unstable_by(by_sector);
-        join(&mut found, |gap_s| gap_s <= TOUCH_S);
-        found.retain(|visit| visit.out_s - visit.in_s > TOUCH_S);
-        found
     }
 
     fn level_changes(&self, path: &Path<'_>) -> Vec<LevelChange> {
@@ -91,6 +139,14 @@ impl SectorIndex {
         }
         changes
     }
+}
+
+/// Maximal intervals by sector, then time.
+fn maximal(mut found: Vec<Visit>) -> Vec<Visit> {
+    found.sort_unstable_by(by_sector);
+    join(&mut found, |gap_s| gap_s <= TOUCH_S);
+    found.retain(|visit| visit.out_s - visit.in_s > TOUCH_S);
+    found
 }
 
 fn by_sector(a: &Visit, b: &Visit) -> std::cmp::Ordering {

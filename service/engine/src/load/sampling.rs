@@ -4,9 +4,11 @@ use proptest::prelude::*;
 
 use super::flight_load::Visit;
 use super::index::SectorIndex;
-use crate::day::{CapacityParts, Date, Day, DayParts, Point, Profile, SectorParts, VolumeParts};
+use crate::day::{
+    CapacityParts, Date, Day, DayParts, Flight, Point, Profile, SectorParts, VolumeParts,
+};
 use crate::ids::SectorId;
-use crate::path::{Knot, Path, Track};
+use crate::path::{Changed, Knot, Path, Track};
 
 const DATE: Date = Date { year: 2031, month: 3, day: 4 };
 
@@ -228,6 +230,69 @@ proptest! {
     fn visits_are_what_sampling_finds((sectors, track) in region()) {
         let Some(day) = day_of(sectors) else { return Err(TestCaseError::reject("no day")) };
         check(&day, &track);
+    }
+
+    /// What is told from the filed visits, against cutting the whole changed path.
+    #[test]
+    fn a_changed_flight_visits_what_its_whole_path_does(
+        (sectors, track) in region(),
+        shares in (0.0..1.0_f64, 0.0..1.0_f64),
+        level in 0_u32..20,
+        pace in prop_oneof![Just(1.0), 0.97..1.03_f64],
+    ) {
+        let Some(day) = day_of(sectors) else { return Err(TestCaseError::reject("no day")) };
+        let last = track.knots().len() - 1;
+        let at = |share: f64| (share * last as f64) as usize;
+        let (leave, back) = (at(shares.0.min(shares.1)), at(shares.0.max(shares.1)) + 1);
+        let changed = change(&track, (leave, back), 28_000.0 + 500.0 * f64::from(level), pace);
+        let (index, flight) = (SectorIndex::new(&day), flight());
+        let filed = index.flight_load(&Path::filed(&track), &flight, &day);
+        let path = Path::changed(&track, &changed);
+        let whole = index.flight_load(&path, &flight, &day);
+        let told = index.changed_load(&path, &flight, &day, &filed);
+        prop_assert_eq!(&told.level_changes, &whole.level_changes);
+        prop_assert_eq!(told.visits.len(), whole.visits.len(), "{:?} {:?}", told, whole);
+        // Crossings at one time may come in either order.
+        for visit in &told.visits {
+            let same = |v: &&Visit| {
+                v.sector == visit.sector
+                    && (v.in_s - visit.in_s).abs() < 1e-6
+                    && (v.out_s - visit.out_s).abs() < 1e-6
+            };
+            prop_assert!(whole.visits.iter().any(|v| same(&v)), "{:?} {:?}", visit, whole);
+        }
+    }
+}
+
+/// A flight between airports that are not listed.
+fn flight() -> Flight {
+    let parts = crate::fixture::flight("F1", &[(0.0, 0.0, 0.0, 330.0), (600.0, 1.0, 0.0, 330.0)]);
+    crate::fixture::day_of(vec![parts]).flights[crate::ids::FlightId(0)].clone()
+}
+
+/// A change from one knot to another: to another level, slower or faster, and back.
+fn change(track: &Track, (leave, back): (usize, usize), level_ft: f64, pace: f64) -> Changed {
+    let filed = track.knots();
+    let leave_s = filed[leave].time_s;
+    let shift_s = ((filed[back].time_s - leave_s) * (pace - 1.0) * 1000.0).round() / 1000.0;
+    let knots = filed[leave + 1..=back].iter().enumerate().map(|(i, knot)| {
+        let is_last = leave + 1 + i == back;
+        Knot {
+            time_s: if is_last {
+                knot.time_s + shift_s
+            } else {
+                leave_s + (knot.time_s - leave_s) * pace
+            },
+            level_ft: if is_last { knot.level_ft } else { level_ft },
+            ..*knot
+        }
+    });
+    Changed {
+        kept: leave + 1,
+        knots: knots.collect(),
+        resume: back + 1,
+        shift_s,
+        off_level_s: Vec::new(),
     }
 }
 

@@ -73,6 +73,7 @@ impl<'a> Path<'a> {
 
     /// The knot at a position below [`len`](Self::len).
     #[must_use]
+    #[inline]
     pub fn knot(&self, index: usize) -> Knot {
         let filed = self.track.knots();
         let Some(c) = self.changed else { return filed[index] };

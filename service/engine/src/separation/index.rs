@@ -32,8 +32,14 @@ pub(super) struct Index {
     /// Where the list of each cell and slot starts in `entries`; one more at the end.
     lists: Vec<u32>,
     entries: Vec<Entry>,
+    /// The start of every [`STRIDE`]th entry: small enough to stay in a cache when lists are
+    /// searched by time.
+    marks: Vec<u32>,
     widest_m: f32,
 }
+
+/// Entries from one mark to the next.
+const STRIDE: usize = 16;
 
 /// A leg in a list, with what most questions need of it: lists are read in sequence, legs at random.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -219,15 +225,20 @@ impl Index {
         }));
         let grid = Grid::around(&all.reaches);
         let (lists, entries) = fill(&grid, &all.legs, &all.reaches);
-        Self { legs: all.legs, starts, grid, lists, entries, widest_m }
+        let marks = entries.iter().step_by(STRIDE).map(|entry| entry.from()).collect();
+        Self { legs: all.legs, starts, grid, lists, entries, marks, widest_m }
     }
 
     /// The legs of an owner, in order of time.
     pub(super) fn legs_of(&self, owner: u32) -> &[Leg] {
+        &self.legs[self.numbers_of(owner)]
+    }
+
+    fn numbers_of(&self, owner: u32) -> Range<usize> {
         let owner = owner as usize;
         match self.starts.get(owner..owner + 2) {
-            Some(&[start, end]) => &self.legs[start as usize..end as usize],
-            _ => &[],
+            Some(&[start, end]) => start as usize..end as usize,
+            _ => 0..0,
         }
     }
 
@@ -250,13 +261,12 @@ impl Index {
         }
         let reach = Reach::of(leg, self.widest_m);
         let blocked = blocked_ft(leg);
-        let earliest = u64::from(steps(period_s.0 - LONGEST_S).saturating_sub(1)) << 32;
+        let earliest = steps(period_s.0 - LONGEST_S).saturating_sub(1);
         let (from, until) = (steps(period_s.0), steps(period_s.1));
         self.grid.each_list(&reach, |cell, slot, list| {
-            let entries = self.list(list);
-            let start = entries.partition_point(|e| e.key < earliest);
+            let entries = self.list_from(list, earliest);
             let mut own = None;
-            for &entry in entries[start..].iter().take_while(|e| e.from() <= until) {
+            for &entry in entries.iter().take_while(|e| e.from() <= until) {
                 let own = *own.get_or_insert_with(|| {
                     Ball::unpacked(Ball::packed(leg, cell)).widened(self.widest_m)
                 });
@@ -313,16 +323,27 @@ impl Index {
         for (i, &entry) in entries.iter().enumerate() {
             let ball = Ball::unpacked(entry.ball).widened(self.widest_m);
             let until = entry.until();
+            // Made when another ball is met for the first time.
+            let mut own = None;
             for &later in entries[i + 1..].iter().take_while(|e| e.from() <= until) {
                 count += 1;
                 if !ball.meets(&Ball::unpacked(later.ball)) {
                     continue;
                 }
-                let (leg, other) = (&self.legs[entry.leg()], &self.legs[later.leg()]);
-                if leg.owner != other.owner
-                    && meet(blocked_ft(leg), blocked_ft(other))
-                    && Reach::of(leg, self.widest_m).first_shared(
-                        &Reach::of(other, self.widest_m),
+                let (leg, numbers, blocked) = own.get_or_insert_with(|| {
+                    let leg = &self.legs[entry.leg()];
+                    (leg, self.numbers_of(leg.owner), blocked_ft(leg))
+                });
+                // By number: to look into the leg is to wait for memory, and most are a flight's
+                // own next ones.
+                if numbers.contains(&later.leg()) {
+                    continue;
+                }
+                let other = &self.legs[later.leg()];
+                let widest_m = self.widest_m;
+                if meet(*blocked, blocked_ft(other))
+                    && Reach::of(leg, widest_m).first_shared(
+                        &Reach::of(other, widest_m),
                         cell,
                         slot,
                     )
@@ -336,6 +357,19 @@ impl Index {
 
     fn list(&self, list: usize) -> &[Entry] {
         &self.entries[self.lists[list] as usize..self.lists[list + 1] as usize]
+    }
+
+    /// A list from about a time on: few of its entries are earlier. Searched by marks: a search of
+    /// the entries themselves misses the cache at every step, and was two thirds of the time in
+    /// which one flight's losses are found.
+    fn list_from(&self, list: usize, earliest: u32) -> &[Entry] {
+        let (start, end) = (self.lists[list] as usize, self.lists[list + 1] as usize);
+        let first_mark = start.div_ceil(STRIDE);
+        let marks = self.marks.get(first_mark..end.div_ceil(STRIDE)).unwrap_or_default();
+        let earlier = marks.partition_point(|&from| from < earliest);
+        // From the last mark that is too early on.
+        let from = if earlier == 0 { start } else { (first_mark + earlier - 1) * STRIDE };
+        &self.entries[from..end]
     }
 }
 
@@ -355,38 +389,60 @@ fn fill(grid: &Grid, legs: &[Leg], reaches: &[Reach]) -> (Vec<u32>, Vec<Entry>) 
     }
     let total = lists.last().map_or(0, |&n| n as usize);
     let mut entries = vec![Entry { key: 0, ball: 0 }; total];
-    let mut next = lists.clone();
+    // A few flights are not worth waking other threads.
+    let few = legs.len() < CHUNK * 32;
+    let groups = if few { 1 } else { rayon::current_num_threads().clamp(1, 8) };
+    let mut rest = entries.as_mut_slice();
+    let mut parts = Vec::with_capacity(groups);
+    let mut first = 0;
+    for group in 1..=groups {
+        let end = (total * group).div_ceil(groups) as u32;
+        let last =
+            if group == groups { lists.len() - 1 } else { lists.partition_point(|&n| n < end) };
+        let last = last.max(first);
+        let (part, after) = rest.split_at_mut((lists[last] - lists[first]) as usize);
+        parts.push((first..last, part));
+        (rest, first) = (after, last);
+    }
+    let fill = |(range, part): (Range<usize>, &mut [Entry])| {
+        fill_part(grid, legs, reaches, &lists[range.start..=range.end], range.start, part);
+    };
+    if few {
+        parts.into_iter().for_each(fill)
+    } else {
+        parts.into_par_iter().for_each(fill)
+    }
+    (lists, entries)
+}
+
+/// Fills consecutive lists, the first of which has a number, and sorts them.
+fn fill_part(
+    grid: &Grid,
+    legs: &[Leg],
+    reaches: &[Reach],
+    lists: &[u32],
+    first_list: usize,
+    entries: &mut [Entry],
+) {
+    let Some((&before, ends)) = lists.split_first() else { return };
+    let mut next = lists[..ends.len()].to_vec();
     for (number, (reach, leg)) in reaches.iter().zip(legs).enumerate() {
         let mut made: Option<([i32; 3], Entry)> = None;
         grid.each_list(reach, |cell, _, list| {
+            let Some(next) = list.checked_sub(first_list).and_then(|i| next.get_mut(i)) else {
+                return;
+            };
             let entry = match made {
                 Some((of, entry)) if of == cell => entry,
                 _ => Entry::new(leg, number, cell),
             };
             made = Some((cell, entry));
-            entries[next[list] as usize] = entry;
-            next[list] += 1;
+            entries[(*next - before) as usize] = entry;
+            *next += 1;
         });
     }
-    let mut rest = entries.as_mut_slice();
-    let mut parts = Vec::with_capacity(grid.used as usize);
-    let slots = grid.slots.max(1) as usize;
-    for cell in lists.windows(slots + 1).step_by(slots) {
-        let (part, after) = rest.split_at_mut((cell[slots] - cell[0]) as usize);
-        parts.push((cell, part));
-        rest = after;
+    for list in lists.windows(2) {
+        let list = (list[0] - before) as usize..(list[1] - before) as usize;
+        entries[list].sort_unstable_by_key(|entry| entry.key);
     }
-    let sort = |(cell, part): (&[u32], &mut [Entry])| {
-        for list in cell.windows(2) {
-            let list = (list[0] - cell[0]) as usize..(list[1] - cell[0]) as usize;
-            part[list].sort_unstable_by_key(|entry| entry.key);
-        }
-    };
-    // A few flights are not worth waking other threads.
-    if legs.len() < CHUNK * 32 {
-        parts.into_iter().for_each(sort);
-    } else {
-        parts.into_par_iter().with_min_len(16).for_each(sort);
-    }
-    (lists, entries)
 }
