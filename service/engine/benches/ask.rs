@@ -10,7 +10,7 @@ use rimeshift_engine::change::change_levels;
 use rimeshift_engine::day::Alternative;
 use rimeshift_engine::ids::FlightId;
 use rimeshift_engine::plan::PlanState;
-use rimeshift_engine::separation::expected_new_losses;
+use rimeshift_engine::separation::{expected_new_losses, new_losses_against_filed};
 use rimeshift_engine::traffic::Traffic;
 use support::{Sectors, day, measure_each, stretches};
 
@@ -62,7 +62,10 @@ fn main() {
         black_box(filed.differences(&traffic, questions[i].flight, &changes[i].changed));
     });
     measure_each("  new losses", count, |i| {
-        black_box(filed.new_losses(&traffic, questions[i].flight, &changes[i].changed));
+        let (flight, changed) = (questions[i].flight, &changes[i].changed);
+        let minima = traffic.minima(flight, changed);
+        let version = traffic.version(flight, changed, &minima);
+        black_box(new_losses_against_filed(&traffic.scene, &version));
     });
     measure_each("  expected new losses", count, |i| {
         let (flight, changed) = (questions[i].flight, &changes[i].changed);

@@ -22,7 +22,9 @@ fn main() {
     let tracks: Arc<IdVec<FlightId, Track>> = Arc::new(tracks.into());
     let pieces: usize = tracks.iter().map(|t| t.knots().len() - 1).sum();
     let scene = Scene::new(&day, Arc::clone(&tracks), Vec::new().into());
-    println!("{pieces} pieces of tracks, {} losses", scene.losses().len());
+    let mut pairs: Vec<_> = scene.losses().iter().map(|l| (l.first, l.second)).collect();
+    pairs.dedup();
+    println!("{pieces} pieces of tracks, {} losses of {} pairs", scene.losses().len(), pairs.len());
     let count = survivors(&scene);
     let share = |n: u64| n as f64 / count.pairs as f64;
     println!(

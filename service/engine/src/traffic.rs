@@ -11,7 +11,6 @@ use crate::ids::{FlightId, Id, IdVec, SectorId};
 use crate::load::{DayLoads, FlightLoad, RestrictionIndex, SectorIndex, Visit};
 use crate::path::{Changed, Path, Track};
 use crate::separation::{HorizontalMinimum, Scene, Version};
-use crate::units::nm_to_m;
 
 /// A day with its indexes.
 #[derive(Debug, Clone)]
@@ -107,13 +106,6 @@ impl Traffic {
         }
         let inside = self.sectors.inside(&self.path(flight, Some(changed)));
         VersionMinima(minima_on(&self.day, &inside))
-    }
-
-    /// The widest horizontal minimum that holds anywhere, metres.
-    #[must_use]
-    pub fn widest_minimum_m(&self) -> f64 {
-        let own = self.day.sectors.iter().filter_map(|s| s.horizontal_nm);
-        nm_to_m(own.fold(self.day.policy.horizontal_nm, f64::max))
     }
 
     /// A changed flight, as separation sees it.

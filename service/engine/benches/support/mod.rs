@@ -38,8 +38,17 @@ const CORNERS: usize = 10;
 
 /// The day, with its sectors or without.
 pub(crate) fn day(sectors: Sectors) -> Day {
+    day_of(flights(), sectors)
+}
+
+/// A day of these flights alone.
+pub(crate) fn day_of(flights: Vec<FlightParts>, sectors: Sectors) -> Day {
     let mut parts = DayParts::empty(Date { year: 2031, month: 3, day: 4 }, "bench");
-    parts.flights = flights();
+    parts.flights = flights;
+    built(parts, sectors)
+}
+
+fn built(mut parts: DayParts, sectors: Sectors) -> Day {
     if sectors == Sectors::Lattice {
         add_sectors(&mut parts);
     }
@@ -62,7 +71,7 @@ fn flights() -> Vec<FlightParts> {
         return flights;
     }
     println!("{FLIGHTS} invented flights");
-    invented(FLIGHTS, 229, [-125.0, 26.0, -68.0, 48.0])
+    invented(FLIGHTS, 229, [-125.0, 26.0, -68.0, 48.0], 1)
 }
 
 /// Flights of a table of points whose rows are `flight,time,lon,lat,level_fl`, in order of flight.
@@ -110,8 +119,14 @@ fn flight(name: String, points: Vec<PointParts>) -> FlightParts {
     FlightParts { flight: name, rvsm: true, movable: true, points, ..FlightParts::default() }
 }
 
-/// Invented flights between airports of a region `[west, south, east, north]`.
-pub(crate) fn invented(count: usize, airports: usize, region: [f64; 4]) -> Vec<FlightParts> {
+/// Invented flights between airports of a region `[west, south, east, north]`, each to the nearest of
+/// some airports that are drawn.
+pub(crate) fn invented(
+    count: usize,
+    airports: usize,
+    region: [f64; 4],
+    drawn: usize,
+) -> Vec<FlightParts> {
     let mut random = Pcg64Mcg::seed_from_u64(2031);
     let airports: Vec<LonLat> = (0..airports)
         .map(|_| LonLat {
@@ -119,17 +134,28 @@ pub(crate) fn invented(count: usize, airports: usize, region: [f64; 4]) -> Vec<F
             lat_deg: random.random_range(region[1]..region[3]),
         })
         .collect();
-    (0..count).map(|i| invented_flight(i, &airports, &mut random)).collect()
+    (0..count).map(|i| invented_flight(i, &airports, drawn, &mut random)).collect()
 }
 
-fn invented_flight(index: usize, airports: &[LonLat], random: &mut Pcg64Mcg) -> FlightParts {
+fn invented_flight(
+    index: usize,
+    airports: &[LonLat],
+    drawn: usize,
+    random: &mut Pcg64Mcg,
+) -> FlightParts {
     // The square favours airports at the start of the list.
     let mut airport = || {
         let share: f64 = random.random_range(0.0..1.0);
         airports[(share * share * airports.len() as f64) as usize]
     };
-    let (from, to) = (airport(), airport());
-    let leg = GeodesicLeg::new(from, to);
+    let from = airport();
+    let mut leg = GeodesicLeg::new(from, airport());
+    for _ in 1..drawn {
+        let other = GeodesicLeg::new(from, airport());
+        if other.length_m < leg.length_m && other.length_m > 100e3 {
+            leg = other;
+        }
+    }
     let cruise_mps = random.random_range(215.0..240.0);
     let start_s = f64::from(random.random_range(5 * 3600..23 * 3600));
     let level = f64::from(random.random_range(0..6)) * 2000.0;
@@ -291,6 +317,13 @@ pub(crate) fn measure_each(name: &str, count: usize, mut run: impl FnMut(usize))
     let mean = times_us.iter().sum::<f64>() / count as f64;
     println!("{name:<52} p50 {:>8.1} us, p99 {:>8.1} us, mean {mean:>8.1} us", at(0.5), at(0.99));
     at(0.5)
+}
+
+/// Memory of this process now, bytes; Linux only, else 0.
+pub(crate) fn memory_bytes() -> f64 {
+    let text = std::fs::read_to_string("/proc/self/statm").unwrap_or_default();
+    let pages = text.split_whitespace().nth(1).and_then(|n| n.parse::<f64>().ok());
+    4096.0 * pages.unwrap_or(0.0)
 }
 
 /// CPU time of this process so far, of all its threads; in steps of 10 ms. Linux only, else 0.
