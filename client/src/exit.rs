@@ -36,6 +36,8 @@ pub(crate) enum Terms<'a> {
     Folder(&'a DayFolder),
     /// As options of the command line: paths, and the option that each stands for.
     Options(&'a [(&'a str, &'a str)]),
+    /// As the options that made a search's decisions by hand, else as files of a day folder.
+    Search(&'a DayFolder, &'a [String]),
     /// As they are.
     Fields,
 }
@@ -48,6 +50,9 @@ impl Terms<'_> {
                 .iter()
                 .find(|(field, _)| *field == path)
                 .map_or_else(|| path.to_owned(), |(_, option)| (*option).to_owned()),
+            Terms::Search(folder, flags) => {
+                flag_of(flags, path).map_or_else(|| folder.place_of(path), str::to_owned)
+            }
             Terms::Fields => path.to_owned(),
         }
     }
@@ -55,9 +60,24 @@ impl Terms<'_> {
     fn text(self, text: &str) -> String {
         match self {
             Terms::Folder(folder) => folder.in_file_terms(text),
+            Terms::Search(_, flags) => with_flags(flags, text),
             Terms::Options(_) | Terms::Fields => text.to_owned(),
         }
     }
+}
+
+/// A text in which decisions are named by their options.
+fn with_flags(flags: &[String], text: &str) -> String {
+    let words = text.split(' ').map(|word| flag_of(flags, word).unwrap_or(word));
+    words.collect::<Vec<_>>().join(" ")
+}
+
+/// The option behind `decisions[2]`, or a field of it.
+fn flag_of<'a>(flags: &'a [String], path: &str) -> Option<&'a str> {
+    let (index, rest) = path.strip_prefix("decisions[")?.split_once(']')?;
+    let whole = rest.is_empty() || rest.starts_with('.');
+    let index: usize = index.parse().ok().filter(|_| whole)?;
+    flags.get(index).map(String::as_str)
 }
 
 /// Why a command gave no answer.
@@ -188,6 +208,17 @@ pub(crate) fn report(outcome: Result<Answered, Failure>, screen: &Screen) -> Exi
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn decisions_are_named_by_their_options() {
+        let flags = ["--grant P1".to_owned(), "--refuse P1".to_owned()];
+        assert_eq!(flag_of(&flags, "decisions[1].must"), Some("--refuse P1"));
+        assert_eq!(flag_of(&flags, "decisions[2].must"), None);
+        assert_eq!(flag_of(&flags, "gap"), None);
+        assert_eq!(with_flags(&flags, "contradicts decisions[0]"), "contradicts --grant P1");
+        let odd = "decisions[x] or decisions[0";
+        assert_eq!(with_flags(&flags, odd), odd);
+    }
 
     #[test]
     fn a_remedy_in_brackets_is_told_apart() {

@@ -7,9 +7,9 @@ use std::sync::Arc;
 use rimeshift_engine::answer::{LossIn, Plan, PlanLoss, Stopped, Verdict};
 use rimeshift_engine::audit::{ClaimedDecision, PlanUnderAudit};
 use rimeshift_engine::change::change_levels;
-use rimeshift_engine::day::{Policy, Stretch};
+use rimeshift_engine::day::{Day, HandDecision, Policy, Stretch};
 use rimeshift_engine::ids::FlightId;
-use rimeshift_engine::plan::PlanState;
+use rimeshift_engine::plan::{PlanState, Unmet};
 use rimeshift_engine::traffic::Traffic;
 use tokio::sync::OnceCell;
 
@@ -54,6 +54,31 @@ pub(crate) struct PlanRecord {
     pub(crate) expected_new_losses: f64,
     /// Its rows, counted.
     pub(crate) counts: Counts,
+    /// What was decided by hand beside the day's own decisions.
+    pub(crate) by_hand: ByHand,
+}
+
+/// Decisions by hand of a search, beside the day's own.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub(crate) struct ByHand {
+    /// The decisions.
+    pub(crate) decisions: Vec<HandDecision>,
+    /// What was to become of those that can't be met.
+    pub(crate) unmet_are: Unmet,
+    /// Those that were planned around, the day's own included.
+    pub(crate) unmet: Vec<HandDecision>,
+}
+
+impl ByHand {
+    /// All that a plan of the day must keep.
+    pub(crate) fn in_force(&self, day: &Day) -> Vec<HandDecision> {
+        let mut all = day.decisions.clone();
+        all.extend(&self.decisions);
+        all.retain(|decision| !self.unmet.contains(decision));
+        all.sort_unstable();
+        all.dedup();
+        all
+    }
 }
 
 /// How many rows a plan has.

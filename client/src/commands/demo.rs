@@ -1,5 +1,6 @@
 //! `rimeshift demo`: checks and plans an invented day that comes with the program.
 
+use super::by_hand::ByHandArgs;
 use super::plan::SearchArgs;
 use super::session::Session;
 use super::{check, plan};
@@ -70,7 +71,7 @@ pub(crate) async fn run(args: &DemoArgs, session: &Session<'_>) -> Result<Answer
     let day = session.load_day(folder, None).await?;
     let answered = async {
         let checked = check::check(session, &day).await?;
-        let found = plan::find(session, &day, &args.search).await?;
+        let found = plan::find(session, &day, &args.search, &ByHandArgs::default()).await?;
         Ok((checked, found))
     };
     let answered = answered.await;

@@ -2,6 +2,7 @@
 
 pub(crate) mod ask;
 pub(crate) mod audit;
+pub(crate) mod by_hand;
 pub(crate) mod check;
 pub(crate) mod compare;
 pub(crate) mod completions;

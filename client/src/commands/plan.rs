@@ -1,8 +1,9 @@
 //! `rimeshift plan`: the best set of proposals that can be granted together.
 
+use super::by_hand::ByHandArgs;
 use super::session::{LoadedDay, Session};
 use crate::args::{FailOn, seconds, share};
-use crate::exit::{Answered, Failure};
+use crate::exit::{Answered, Failure, Terms};
 use crate::plan_folder::{self, Existing, FoundPlan, FoundPlans};
 use crate::report::figures::{percent, scientific};
 use crate::report::plan::PlanReport;
@@ -32,6 +33,8 @@ pub(crate) struct PlanArgs {
     proposals: Option<PathBuf>,
     #[command(flatten)]
     search: SearchArgs,
+    #[command(flatten)]
+    by_hand: ByHandArgs,
     /// End with exit code 1 if the planned day still holds this.
     #[arg(long, value_name = "WHAT")]
     fail_on: Vec<FailOn>,
@@ -79,7 +82,7 @@ pub(crate) async fn run(args: &PlanArgs, session: &Session<'_>) -> Result<Answer
     let existing = if args.replace { Existing::Replace } else { Existing::Keep };
     plan_folder::check_place(&args.out, existing)?;
     let day = session.load_day(&args.day, args.proposals.as_deref()).await?;
-    let planned = find(session, &day, &args.search).await;
+    let planned = find(session, &day, &args.search, &args.by_hand).await;
     session.forget(&day).await;
     let found = planned?;
     plan_folder::write(&args.out, &found, existing)?;
@@ -111,19 +114,9 @@ pub(super) async fn find(
     session: &Session<'_>,
     day: &LoadedDay,
     search: &SearchArgs,
+    by_hand: &ByHandArgs,
 ) -> Result<FoundPlans, Failure> {
-    let progress = session.screen.begin("planning");
-    let found = collect(session, day, search, &progress).await;
-    progress.finish_and_clear();
-    found.map_err(|status| day.failure(&status))
-}
-
-async fn collect(
-    session: &Session<'_>,
-    day: &LoadedDay,
-    search: &SearchArgs,
-    progress: &ProgressBar,
-) -> Result<FoundPlans, Status> {
+    let (decisions, flags) = by_hand.decisions();
     let request = FindPlansRequest {
         parent: day.day.name.clone(),
         plans: Some(search.plans),
@@ -132,8 +125,22 @@ async fn collect(
         policy: search.policy(),
         exact_limits: search.exact_limits,
         max_time: search.seconds.and_then(|time| prost_types::Duration::try_from(time).ok()),
+        decisions,
+        around_decisions: by_hand.around_decisions,
         ..FindPlansRequest::default()
     };
+    let progress = session.screen.begin("planning");
+    let found = collect(session, day, request, &progress).await;
+    progress.finish_and_clear();
+    found.map_err(|status| Failure::of_status(&status, Terms::Search(&day.folder, &flags)))
+}
+
+async fn collect(
+    session: &Session<'_>,
+    day: &LoadedDay,
+    request: FindPlansRequest,
+    progress: &ProgressBar,
+) -> Result<FoundPlans, Status> {
     let mut found = FoundPlans { day: day.day.clone(), ..FoundPlans::default() };
     let mut answer = session.plans().find_plans(request).await?.into_inner();
     while let Some(message) = answer.message().await? {

@@ -1,6 +1,7 @@
 //! `plan.json` as data, to and from what the service sends.
 
 use super::FoundPlans;
+use super::hand::HandDocument;
 use crate::report::figures::{date, rfc3339};
 use crate::report::names;
 use crate::report::policy::value_json;
@@ -33,6 +34,15 @@ pub(super) struct PlanDocument {
     pub(super) bound: Option<f64>,
     pub(super) gap: Option<f64>,
     pub(super) expected_new_losses: f64,
+    /// Decisions by hand beside the day's own.
+    #[serde(skip_serializing_if = "Vec::is_empty", default)]
+    pub(super) by_hand: Vec<HandDocument>,
+    /// Whether decisions by hand that can't be met were to be planned around.
+    #[serde(skip_serializing_if = "std::ops::Not::not", default)]
+    pub(super) around_decisions: bool,
+    /// Those that were.
+    #[serde(skip_serializing_if = "Vec::is_empty", default)]
+    pub(super) unmet: Vec<HandDocument>,
     pub(super) plans: Vec<RankedDocument>,
 }
 
@@ -136,6 +146,9 @@ impl PlanDocument {
             bound: origin.bound,
             gap: origin.gap,
             expected_new_losses: best.map_or(0.0, |best| best.plan.expected_new_losses),
+            by_hand: origin.decisions.iter().map(HandDocument::of).collect(),
+            around_decisions: origin.around_decisions,
+            unmet: origin.unmet.iter().map(HandDocument::of).collect(),
             plans: found
                 .plans
                 .iter()

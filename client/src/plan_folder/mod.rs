@@ -10,6 +10,7 @@
 //! appears whole or not at all: it is written beside its place, flushed to the disk, and renamed.
 
 mod document;
+mod hand;
 mod read;
 mod tables;
 #[cfg(test)]
@@ -17,6 +18,7 @@ pub(crate) mod tests;
 mod write;
 
 pub(crate) use document::{ReasonDocument, StretchDocument};
+pub(crate) use hand::HandDocument;
 pub(crate) use read::{load, read};
 pub(crate) use write::{Existing, check_place, write};
 

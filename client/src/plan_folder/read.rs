@@ -1,6 +1,7 @@
 //! Reads a plan folder back, and gives it to the service.
 
 use super::document::PlanDocument;
+use super::hand::HandDocument;
 use super::tables::{read_loads, read_losses};
 use super::{DOCUMENT, FoundPlan, points_name};
 use crate::commands::session::{LoadedDay, Session};
@@ -117,6 +118,18 @@ fn best_plan(
         findings.defects.add(format_args!("{place}: policy.{key}"), "is no value of a policy");
         Vec::new()
     });
+    let mut by_hand = |key: &str, documents: &[HandDocument]| {
+        let mut decisions = Vec::with_capacity(documents.len());
+        for (index, document) in documents.iter().enumerate() {
+            match document.decision() {
+                Ok(decision) => decisions.push(decision),
+                Err(problem) => {
+                    findings.defects.add_problem(format_args!("{place}: {key}[{index}]"), problem)
+                }
+            }
+        }
+        decisions
+    };
     let origin = PlanOrigin {
         day_sha256: document.day_sha256.clone(),
         program_version: document.program_version.clone(),
@@ -125,6 +138,9 @@ fn best_plan(
         stopped: document.stopped_value(),
         bound: document.bound,
         gap: document.gap,
+        decisions: by_hand("by_hand", &document.by_hand),
+        around_decisions: document.around_decisions,
+        unmet: by_hand("unmet", &document.unmet),
     };
     let plan = Plan {
         name: String::new(),

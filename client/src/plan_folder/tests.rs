@@ -5,6 +5,7 @@ use crate::exit::Failure;
 use crate::tables::time::parse_utc;
 use expect_test::expect;
 use rimeshift_proto::v1::constraint::Kind;
+use rimeshift_proto::v1::hand_decision::About;
 use rimeshift_proto::v1::policy_value;
 use rimeshift_proto::v1::*;
 use std::fs;
@@ -185,6 +186,12 @@ pub(crate) fn plans() -> FoundPlans {
         stopped: Stopped::Gap.into(),
         bound: Some(3.5e12),
         gap: Some(0.047_619),
+        decisions: vec![
+            by_hand(About::Proposal("P1".to_owned()), Must::Grant, Some(2)),
+            by_hand(About::Flight("BBB2".to_owned()), Must::Keep, None),
+        ],
+        around_decisions: true,
+        unmet: vec![by_hand(About::Proposal("P1".to_owned()), Must::Grant, Some(2))],
     };
     let plan = Plan {
         rank: 1,
@@ -213,6 +220,10 @@ pub(crate) fn plans() -> FoundPlans {
         plans: vec![FoundPlan { plan, rows }, other],
         limit_prices: Vec::new(),
     }
+}
+
+fn by_hand(about: About, must: Must, option: Option<u32>) -> HandDecision {
+    HandDecision { about: Some(about), must: must.into(), option }
 }
 
 fn names_in(folder: &Path) -> Vec<String> {
@@ -317,6 +328,25 @@ fn the_files_are_as_described() {
           "bound": 3500000000000.0,
           "gap": 0.047619,
           "expected_new_losses": 0.125,
+          "by_hand": [
+            {
+              "proposal": "P1",
+              "must": "grant",
+              "option": 2
+            },
+            {
+              "flight": "BBB2",
+              "must": "keep"
+            }
+          ],
+          "around_decisions": true,
+          "unmet": [
+            {
+              "proposal": "P1",
+              "must": "grant",
+              "option": 2
+            }
+          ],
           "plans": [
             {
               "rank": 1,
@@ -500,6 +530,7 @@ fn damaged_plans_are_named() {
         said("plan.json", "\"verdict\": \"refused\"", "\"verdict\": \"maybe\""),
         said("plan.json", "\"sector-occupancy\"", "\"sector-mood\""),
         said("plan.json", "2031-03-04T06:10:00.000Z", "06:10"),
+        said("plan.json", "\"must\": \"keep\"", "\"must\": \"leave\""),
         said("plan.json", "{", "["),
         said("points.csv", "372.5", "x"),
         said("loads.csv", "entries", "smiles"),
@@ -511,6 +542,7 @@ fn damaged_plans_are_named() {
         PLAN/plan.json: proposal "P2": "maybe" is no verdict
         PLAN/plan.json: proposal "P2": "sector-mood" is no kind of reason
         PLAN/plan.json: proposal "P1": "06:10" is not an RFC 3339 time
+        PLAN/plan.json: by_hand[1]: must "leave" is not grant, refuse or keep
         PLAN/plan.json: is no plan: expected `,` or `]` at line 2 column 9
           hint: give a folder that `rimeshift plan` wrote
         PLAN/points.csv:3: column level_fl: "x" is not a number

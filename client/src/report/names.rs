@@ -3,9 +3,10 @@
 
 use crate::report::figures;
 use rimeshift_proto::v1::constraint::Kind;
+use rimeshift_proto::v1::hand_decision::About;
 use rimeshift_proto::v1::{
-    BrokenRule, ChangeRule, Constraint, FindingKind, LoadMeasure, LossVersion, Place, Stopped,
-    Verdict, place,
+    BrokenRule, ChangeRule, Constraint, FindingKind, HandDecision, LoadMeasure, LossVersion, Must,
+    Place, Stopped, Verdict, place,
 };
 
 /// A measure in load rows of files and JSON.
@@ -126,6 +127,22 @@ pub(crate) fn rule(rule: i32) -> String {
     let rule = ChangeRule::try_from(rule).unwrap_or_default();
     let name = rule.as_str_name().trim_start_matches("CHANGE_RULE_");
     name.to_lowercase().replace('_', "-")
+}
+
+/// A decision by hand, in words.
+pub(crate) fn hand_decision(decision: &HandDecision) -> String {
+    let about = match &decision.about {
+        Some(About::Proposal(name)) => format!("proposal {name}"),
+        Some(About::Flight(name)) => format!("flight {name}"),
+        None => "?".to_owned(),
+    };
+    match (Must::try_from(decision.must).unwrap_or_default(), decision.option) {
+        (Must::Unspecified, _) => about,
+        (Must::Grant, Some(option)) => format!("grant {about} with option {option}"),
+        (Must::Grant, None) => format!("grant {about}"),
+        (Must::Refuse, _) => format!("refuse {about}"),
+        (Must::Keep, _) => format!("keep {about} as filed"),
+    }
 }
 
 /// A broken rule for people.

@@ -6,12 +6,13 @@ use super::figures::{
 };
 use super::names;
 use super::sheet::{Sheet, first_rows, numbers, words};
-use crate::plan_folder::{FoundPlan, FoundPlans, ReasonDocument, StretchDocument};
+use crate::plan_folder::{FoundPlan, FoundPlans, HandDocument, ReasonDocument, StretchDocument};
 use crate::screen::Layout;
 use rimeshift_proto::v1::constraint::Kind;
 use rimeshift_proto::v1::policy_value;
 use rimeshift_proto::v1::{
-    Constraint, Decision, LimitPrice, LoadMeasure, LossVersion, PlannedStretch, Stopped, Verdict,
+    Constraint, Decision, HandDecision, LimitPrice, LoadMeasure, LossVersion, PlannedStretch,
+    Stopped, Verdict,
 };
 use serde_json::{Value, json};
 use std::collections::BTreeMap;
@@ -180,6 +181,12 @@ impl PlanReport<'_> {
             totals.new_losses, totals.removed_losses, best.plan.expected_new_losses
         ));
         sheet.line(cautions::LOSSES);
+        for unmet in &origin.unmet {
+            sheet.line(&format!(
+                "Decided by hand, but can't be met, and planned around: {}.",
+                names::hand_decision(unmet)
+            ));
+        }
         let why: Vec<String> = reason_counts(best)
             .into_iter()
             .map(|(kind, count)| format!("{kind} {count}"))
@@ -252,6 +259,8 @@ impl PlanReport<'_> {
             "expected_new_losses": best.plan.expected_new_losses,
             "limit_prices": self.found.limit_prices.iter().map(limit_price_json).collect::<Vec<_>>(),
             "written_to": self.written_to.map(|folder| folder.display().to_string()),
+            "around_decisions": origin.around_decisions,
+            "unmet": origin.unmet.iter().map(hand_json).collect::<Vec<_>>(),
             "decisions": decisions,
             "cautions": [cautions::LOSSES, cautions::FULL],
         });
@@ -353,6 +362,11 @@ pub(crate) fn constraint_json(constraint: &Constraint) -> Value {
         object.insert("why".to_owned(), json!(names::broken_rule(broken)));
     }
     value
+}
+
+/// A decision by hand for programs, as plan.json holds it.
+fn hand_json(decision: &HandDecision) -> Value {
+    serde_json::to_value(HandDocument::of(decision)).unwrap_or(Value::Null)
 }
 
 /// A stretch for programs, as plan.json holds it.

@@ -229,40 +229,41 @@ fn a_plan_says_what_is_granted_and_why_the_rest_is_not() {
     check(
         &report.text(Layout::Plain),
         expect![[r#"
-        Nowhere 2031-03-04: 1 of 2 proposals granted, proven to be within 4.76 % of the best.
-        Net benefit 3.333e12 J (proven bound 3.500e12 J); 12.5 km of contrails avoided; -3.2 kg of extra
-        fuel.
-        Granted as asked 0, amended 1, refused 1, invalid 0.
-        New losses of separation: 0; filed losses removed: 1; expected new losses: 0.125.
-        A day ahead, times are uncertain by minutes: losses at nominal times speak of the timetable, not of
-        the day.
-        Refusals by reason (one may have several): fuel-limit 1, invalid 1, not-worth-it 1, own-change 1,
-        plan-limit 1, sector-occupancy 1, separation 1, separation-risk 1.
+            Nowhere 2031-03-04: 1 of 2 proposals granted, proven to be within 4.76 % of the best.
+            Net benefit 3.333e12 J (proven bound 3.500e12 J); 12.5 km of contrails avoided; -3.2 kg of extra
+            fuel.
+            Granted as asked 0, amended 1, refused 1, invalid 0.
+            New losses of separation: 0; filed losses removed: 1; expected new losses: 0.125.
+            A day ahead, times are uncertain by minutes: losses at nominal times speak of the timetable, not of
+            the day.
+            Decided by hand, but can't be met, and planned around: grant proposal P1 with option 2.
+            Refusals by reason (one may have several): fuel-limit 1, invalid 1, not-worth-it 1, own-change 1,
+            plan-limit 1, sector-occupancy 1, separation 1, separation-risk 1.
 
-        Granted
-         proposal  flight  option  level     leaves          returns         km avoided  extra kg  shift s
-         P1        AAA1    2       FL 372.5  03-04 06:10:00  03-04 07:00:12        12.5      -3.2     17.0
+            Granted
+             proposal  flight  option  level     leaves          returns         km avoided  extra kg  shift s
+             P1        AAA1    2       FL 372.5  03-04 06:10:00  03-04 07:00:12        12.5      -3.2     17.0
 
-        Refused
-         proposal  flight  why not                                                                    what would make room
-         P2        BBB2    NORTH occupancy 03-04 06:20–06:31: 13 where 12.50 is allowed (and 7 more)  without P1 (loses 3.000e12)
+            Refused
+             proposal  flight  why not                                                                    what would make room
+             P2        BBB2    NORTH occupancy 03-04 06:20–06:31: 13 where 12.50 is allowed (and 7 more)  without P1 (loses 3.000e12)
 
-        Other plans
-         rank  net benefit  granted  expected new losses
-            2            0        0                0.000
+            Other plans
+             rank  net benefit  granted  expected new losses
+                2            0        0                0.000
 
-        Written to out
+            Written to out
 
-        A planning aid: it gives no clearances and replaces no controller, no flight-plan acceptance and no
-        local procedure. Minima and capacities are yours to set, under local rules and licensed practice.
-        Left out: water vapour, NOx and aerosol effects, speed control, lateral changes, climb performance
-        near the ceiling.
-    "#]],
+            A planning aid: it gives no clearances and replaces no controller, no flight-plan acceptance and no
+            local procedure. Minima and capacities are yours to set, under local rules and licensed practice.
+            Left out: water vapour, NOx and aerosol effects, speed control, lateral changes, climb performance
+            near the ceiling.
+        "#]],
     );
     check(
         &keys(&report.json()),
         expect![
-            "amended bound cautions contrail_km_avoided date day_sha256 decisions expected_new_losses extra_fuel_kg gap granted invalid limit_prices new_losses objective planned_losses planned_overloads refused region removed_losses stopped written_to"
+            "amended around_decisions bound cautions contrail_km_avoided date day_sha256 decisions expected_new_losses extra_fuel_kg gap granted invalid limit_prices new_losses objective planned_losses planned_overloads refused region removed_losses stopped unmet written_to"
         ],
     );
     assert_eq!((report.planned_overloads(), report.planned_losses()), (1, 0));

@@ -108,6 +108,59 @@ fn proposals_of_another_file_take_the_place_of_the_days() {
 }
 
 #[test]
+fn decisions_by_hand_are_kept_or_named_or_planned_around() {
+    let day = day_with("");
+    let within = tempfile::tempdir().expect("a folder");
+    let plan = within.path().join("plan");
+    let (folder, out) = (arg(day.path()), arg(&plan));
+    let unmet = run(&["plan", folder, "--out", out, "--grant", "P1=1"]);
+    assert_eq!(unmet.code, Some(2), "{}", unmet.err);
+    expect![[r#"
+        error: grant proposal `P1` with option 1: can't be met: option 1: a loss of separation with flight `BBB2` at 06:11:00 (0.60 NM, 999 ft)
+    "#]].assert_eq(&unmet.err);
+    assert!(!plan.exists());
+
+    let args = ["--grant", "P1=1", "--refuse", "P2", "--around-decisions", "--json"];
+    let around = run(&[["plan", folder, "--out", out].as_slice(), &args].concat());
+    assert_eq!(around.code, Some(0), "{}", around.err);
+    let value: serde_json::Value = serde_json::from_str(&around.out).expect("JSON");
+    assert_eq!(value["granted"], 0);
+    assert_eq!(value["around_decisions"], true);
+    assert_eq!(value["unmet"][0]["proposal"], "P1");
+    let document = fs::read_to_string(plan.join("plan.json")).expect("text");
+    assert!(document.contains("\"around_decisions\": true"), "{document}");
+    let audited = run(&["audit", folder, out]);
+    assert_eq!(audited.code, Some(0), "{}{}", audited.out, audited.err);
+
+    // The audit knows what was decided: without it, the refusal has no reason.
+    let decided = "{\n      \"proposal\": \"P2\",\n      \"must\": \"refuse\"\n    }";
+    assert!(document.contains(decided), "{document}");
+    let other = document.replace(decided, "{\"flight\": \"BBB2\", \"must\": \"keep\"}");
+    fs::write(plan.join("plan.json"), other).expect("written");
+    assert_eq!(run(&["audit", folder, out]).code, Some(4));
+}
+
+#[test]
+fn decisions_that_contradict_the_days_are_named() {
+    let day = day_with("=== decisions.csv\nproposal,flight,must\nP1,,refuse\n,CCC3,keep\n");
+    let within = tempfile::tempdir().expect("a folder");
+    let plan = within.path().join("plan");
+    let (folder, out) = (arg(day.path()), arg(&plan));
+    let both = run(&["plan", folder, "--out", out, "--keep", "AAA1", "--grant", "P1"]);
+    assert_eq!(both.code, Some(2), "{}", both.err);
+    expect![[r#"
+        error: --grant P1: contradicts --keep AAA1
+          hint: decide each proposal and flight one way
+        error: --grant P1: contradicts the day's own decision to refuse proposal `P1`
+          hint: decide each proposal and flight one way
+    "#]]
+    .assert_eq(&both.err);
+    let planned = run(&["plan", folder, "--out", out, "--keep", "AAA1"]);
+    assert_eq!(planned.code, Some(0), "{}", planned.err);
+    assert!(planned.out.contains("0 of 2 proposals granted"), "{}", planned.out);
+}
+
+#[test]
 fn the_demo_runs_from_any_folder() {
     let within = tempfile::tempdir().expect("a folder");
     let output = program(&["demo", "--write", "day", "--out", "plan", "--json"])

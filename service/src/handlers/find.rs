@@ -6,7 +6,7 @@ use std::time::{Duration, Instant};
 use rimeshift_engine::answer::{Plan, Plans};
 use rimeshift_engine::audit::PlanUnderAudit;
 use rimeshift_engine::day::Policy;
-use rimeshift_engine::plan::{FindOptions, PlanError, Progress, Watch, find};
+use rimeshift_engine::plan::{FindOptions, PlanError, Progress, Unmet, Watch, find};
 use rimeshift_proto::v1;
 use rimeshift_proto::v1::find_plans_response::Content;
 use tokio::sync::{mpsc, watch};
@@ -17,12 +17,12 @@ use crate::compute::{StopSign, Work};
 use crate::days::{LoadedDay, Ready};
 use crate::error::ServiceError;
 use crate::names::{DayName, ResourceId};
-use crate::plans::{Counts, KeptPlan, PlanRecord};
+use crate::plans::{ByHand, Counts, KeptPlan, PlanRecord};
 use crate::shelf::Replace;
 use crate::wire::answer::Answers;
 use crate::wire::chunks::chunks;
 use crate::wire::fields::Fields;
-use crate::wire::{policy, to_wire};
+use crate::wire::{by_hand, policy, to_wire};
 
 /// Most plans of one search.
 const MOST_PLANS: u32 = 20;
@@ -57,7 +57,9 @@ impl Api {
     ) -> Result<Search, ServiceError> {
         let day = self.days.get(&DayName::parse("parent", &request.parent)?)?;
         let mut fields = Fields::default();
-        let options = options(&request, &mut fields);
+        let mut options = options(&request, &mut fields);
+        options.decisions =
+            by_hand::resolve(day.ready.day(), "decisions", request.decisions, &mut fields);
         let time = max_time(request.max_time, &mut fields);
         let mut policy = day.ready.day().policy.clone();
         policy::apply(request.policy, &mut policy, LOADING_KEYS, &mut fields);
@@ -138,7 +140,8 @@ impl Api {
             .zip(plans.plans.iter().zip(records))
             .map(|(rank, (plan, record))| {
                 let name = search.day.name.plan(id.ranked(rank));
-                let claim = PlanUnderAudit::of(plan, plans.bound);
+                let mut claim = PlanUnderAudit::of(plan, plans.bound);
+                claim.by_hand = Some(record.by_hand.in_force(search.day.ready.day()));
                 let plan =
                     KeptPlan::new(name.clone(), search.policy.clone(), record.clone(), claim);
                 (name, Arc::new(plan))
@@ -171,7 +174,16 @@ fn options(request: &v1::FindPlansRequest, fields: &mut Fields) -> FindOptions {
         fields.push(|| "exact_limits".to_owned(), problem, format!("0 to {MOST_EXACT_LIMITS}"));
     }
     let exact_limits = request.exact_limits.min(MOST_EXACT_LIMITS) as usize;
-    FindOptions { plans: plans as usize, seed: request.seed, work, gap, exact_limits, ..default }
+    let unmet = if request.around_decisions { Unmet::PlanAround } else { Unmet::Refuse };
+    FindOptions {
+        plans: plans as usize,
+        seed: request.seed,
+        work,
+        gap,
+        exact_limits,
+        unmet,
+        ..default
+    }
 }
 
 fn max_time(time: Option<prost_types::Duration>, fields: &mut Fields) -> Option<Duration> {
@@ -260,6 +272,11 @@ fn records(plans: &Plans, search: &Search, same_loss_s: f64) -> Vec<PlanRecord> 
             objective: plan.objective,
             expected_new_losses: plan.expected_new_losses,
             counts: Counts::of_plan(plan, &claim.decisions, same_loss_s),
+            by_hand: ByHand {
+                decisions: search.options.decisions.clone(),
+                unmet_are: search.options.unmet,
+                unmet: plans.unmet.clone(),
+            },
         }
     };
     (1..).zip(&plans.plans).map(record).collect()
@@ -280,7 +297,7 @@ async fn send_plans(
     sender: &Sender,
 ) {
     let Some(best) = records.first() else { return };
-    let origin = to_wire::origin(best, &search.policy, &search.day.sha256);
+    let origin = to_wire::origin(best, &search.policy, &search.day);
     let summaries = records.iter().enumerate().map(|(i, record)| v1::Plan {
         name: kept.get(i).cloned().unwrap_or_default(),
         ..to_wire::plan_summary(record)

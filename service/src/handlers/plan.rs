@@ -4,6 +4,7 @@ use std::sync::Arc;
 
 use rimeshift_engine::audit::audit;
 use rimeshift_engine::day::Policy;
+use rimeshift_engine::plan::Unmet;
 use rimeshift_proto::v1;
 use rimeshift_proto::v1::load_plan_request::Content;
 use rimeshift_proto::v1::plan_service_server::PlanService;
@@ -20,12 +21,12 @@ use crate::days::LoadedDay;
 use crate::deadline;
 use crate::error::ServiceError;
 use crate::names::{DayName, PlanName, ResourceId};
-use crate::plans::{Counts, KeptPlan, PlanRecord};
+use crate::plans::{ByHand, Counts, KeptPlan, PlanRecord};
 use crate::shelf::Replace;
 use crate::stream::RowStream;
 use crate::wire::fields::Fields;
 use crate::wire::plan_rows::{ReceivingPlan, brought, stopped};
-use crate::wire::{finding, policy, to_wire};
+use crate::wire::{by_hand, finding, policy, to_wire};
 
 /// Messages that wait for a slow reader.
 const QUEUE: usize = 4;
@@ -148,14 +149,15 @@ impl PlanService for Api {
         }
         // The gap of a search is that of its best plan.
         let gap = record.gap.filter(|_| record.rank == 1);
-        let claim = receiving
+        let mut claim = receiving
             .finish(record.objective, record.bound, gap)
             .map_err(ServiceError::bad_fields)?;
+        claim.by_hand = Some(record.by_hand.in_force(day.ready.day()));
         record.counts = Counts::of_decisions(&claim.decisions);
         let plan = Arc::new(KeptPlan::new(name.clone(), policy, record, claim));
         self.still_held(&day)?;
         day.plans.put(vec![(name, Arc::clone(&plan))], replace)?;
-        let plan = to_wire::kept_plan(&plan, &day.sha256);
+        let plan = to_wire::kept_plan(&plan, &day);
         Ok(Response::new(v1::LoadPlanResponse { plan: Some(plan) }))
     }
 
@@ -188,7 +190,7 @@ impl PlanService for Api {
         request: Request<v1::GetPlanRequest>,
     ) -> Result<Response<v1::GetPlanResponse>, Status> {
         let (day, plan) = self.plan(&request.into_inner().name)?;
-        let plan = Some(to_wire::kept_plan(&plan, &day.sha256));
+        let plan = Some(to_wire::kept_plan(&plan, &day));
         Ok(Response::new(v1::GetPlanResponse { plan }))
     }
 
@@ -205,7 +207,7 @@ impl PlanService for Api {
         };
         let plans = day.plans.page(after.as_ref(), size + 1);
         let (plans, next_page_token) = paging::cut(plans, size, |plan| plan.name.to_string());
-        let plans = plans.iter().map(|plan| to_wire::kept_plan(plan, &day.sha256)).collect();
+        let plans = plans.iter().map(|plan| to_wire::kept_plan(plan, &day)).collect();
         Ok(Response::new(v1::ListPlansResponse { plans, next_page_token }))
     }
 
@@ -277,6 +279,11 @@ fn record(
             fields.push(|| format!("policy.{key}"), "is not the day's", *why);
         }
     }
+    let own_day = day.ready.day();
+    let decisions =
+        by_hand::resolve(own_day, "header.plan.origin.decisions", origin.decisions, fields);
+    let unmet = by_hand::find(own_day, "header.plan.origin.unmet", origin.unmet, fields);
+    let unmet_are = if origin.around_decisions { Unmet::PlanAround } else { Unmet::Refuse };
     let record = PlanRecord {
         program_version: origin.program_version,
         seed: origin.seed,
@@ -287,6 +294,7 @@ fn record(
         objective: plan.objective,
         expected_new_losses: plan.expected_new_losses,
         counts: Counts::default(),
+        by_hand: ByHand { decisions, unmet_are, unmet },
     };
     Ok((record, policy))
 }

@@ -6,6 +6,7 @@
 //! counts for the day's hash.
 
 pub(crate) mod answer;
+pub(crate) mod by_hand;
 pub(crate) mod chunks;
 pub(crate) mod clock;
 pub(crate) mod fields;

@@ -1,9 +1,10 @@
 //! Summaries of days and plans to the wire.
 
 use rimeshift_engine::day::{Date, Day, Policy, Warning};
+use rimeshift_engine::plan::Unmet;
 use rimeshift_proto::v1;
 
-use super::{answer, clock, policy};
+use super::{answer, by_hand, clock, policy};
 use crate::days::LoadedDay;
 use crate::plans::{Counts, KeptPlan, PlanRecord};
 
@@ -64,10 +65,10 @@ fn counts(day: &Day) -> v1::DayCounts {
 }
 
 /// A kept plan's summary.
-pub(crate) fn kept_plan(plan: &KeptPlan, day_sha256: &str) -> v1::Plan {
+pub(crate) fn kept_plan(plan: &KeptPlan, day: &LoadedDay) -> v1::Plan {
     v1::Plan {
         name: plan.name.to_string(),
-        origin: Some(origin(&plan.record, &plan.policy, day_sha256)),
+        origin: Some(origin(&plan.record, &plan.policy, day)),
         ..plan_summary(&plan.record)
     }
 }
@@ -84,15 +85,19 @@ pub(crate) fn plan_summary(record: &PlanRecord) -> v1::Plan {
 }
 
 /// What all plans of a search share.
-pub(crate) fn origin(record: &PlanRecord, by: &Policy, day_sha256: &str) -> v1::PlanOrigin {
+pub(crate) fn origin(record: &PlanRecord, by: &Policy, day: &LoadedDay) -> v1::PlanOrigin {
+    let by_hand = |decisions| by_hand::to_wire(day.ready.answers(), decisions);
     v1::PlanOrigin {
-        day_sha256: day_sha256.to_owned(),
+        day_sha256: day.sha256.clone(),
         program_version: record.program_version.clone(),
         policy: policy::settings(by),
         seed: record.seed,
         stopped: answer::stopped(record.stopped).into(),
         bound: record.bound,
         gap: record.gap,
+        decisions: by_hand(&record.by_hand.decisions),
+        around_decisions: record.by_hand.unmet_are == Unmet::PlanAround,
+        unmet: by_hand(&record.by_hand.unmet),
     }
 }
 

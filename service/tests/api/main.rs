@@ -3,6 +3,7 @@
 #![expect(clippy::unwrap_used, reason = "helpers of tests, which clippy takes for other code")]
 
 mod any_message;
+mod by_hand;
 mod days;
 mod plans;
 mod program;

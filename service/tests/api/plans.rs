@@ -12,7 +12,7 @@ use crate::support::{at, eastbound, header, load, proposal, service, small, smal
 const DAY: &str = "days/day";
 
 /// A day on which P1 would bring F1 into a loss with F0, which flies 10 s behind it above.
-async fn contested_day(channel: &Channel) -> v1::Day {
+pub(crate) async fn contested_day(channel: &Channel) -> v1::Day {
     let mut rows = small_day();
     rows.flights.push(eastbound("F0", 10.0, 50.0, 35_000.0));
     load(channel, header("day"), vec![rows]).await.unwrap().day.unwrap()
@@ -34,12 +34,12 @@ async fn ask(
 
 /// Everything that a search sends.
 #[derive(Debug, Default, PartialEq)]
-struct Found {
-    origin: v1::PlanOrigin,
-    plans: Vec<(v1::Plan, v1::PlanRows)>,
+pub(crate) struct Found {
+    pub(crate) origin: v1::PlanOrigin,
+    pub(crate) plans: Vec<(v1::Plan, v1::PlanRows)>,
 }
 
-async fn find(
+pub(crate) async fn find(
     client: &mut PlanServiceClient<Channel>,
     request: v1::FindPlansRequest,
 ) -> Result<Found, Status> {
@@ -63,7 +63,7 @@ async fn find(
     Ok(found)
 }
 
-fn request(plan_id: &str) -> v1::FindPlansRequest {
+pub(crate) fn request(plan_id: &str) -> v1::FindPlansRequest {
     v1::FindPlansRequest { parent: DAY.into(), plan_id: plan_id.into(), ..Default::default() }
 }
 

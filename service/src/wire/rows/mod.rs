@@ -6,7 +6,7 @@ mod places;
 mod proposals;
 
 pub(crate) use flights::append_points;
-pub(crate) use proposals::alternative;
+pub(crate) use proposals::{alternative, decision};
 
 use std::collections::HashMap;
 

@@ -76,7 +76,7 @@ pub(crate) fn alternative(
 }
 
 /// A decision by hand, of a day or of a request; `None` where its fields make none, which is noted.
-pub(super) fn decision(
+pub(crate) fn decision(
     path: impl Fn() -> String,
     wire: v1::HandDecision,
     fields: &mut Fields,

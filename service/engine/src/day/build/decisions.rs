@@ -2,9 +2,76 @@
 
 use super::super::hand::{HandDecision, HandSubject};
 use super::super::parts::{DecisionAbout, DecisionParts, Must};
-use super::super::{Flight, Proposal};
+use super::super::{Day, Defect, Flight, Proposal};
 use super::Build;
 use crate::ids::{FlightId, ProposalId};
+
+impl Day {
+    /// Decisions by hand beside the day's own, in order and each once.
+    ///
+    /// # Errors
+    /// Names that the day does not have, and decisions that contradict each other or the day's own;
+    /// paths are `decisions[i]`, counted over `parts`.
+    pub fn further_decisions(
+        &self,
+        parts: &[DecisionParts],
+    ) -> Result<Vec<HandDecision>, Vec<Defect>> {
+        let mut build = Build::default();
+        let proposals = self.proposals.as_slice();
+        let found = build.resolved_decisions(parts, self.flights.as_slice(), proposals);
+        build.contradictions(&found, proposals);
+        for (i, decision) in &found {
+            if let Some(own) = self.decisions.iter().find(|own| self.contradict(**own, *decision)) {
+                build.defects.push(
+                    || format!("decisions[{i}].must"),
+                    format!("contradicts the day's own decision to {}", self.told(*own)),
+                    "decide each proposal and flight one way",
+                );
+            }
+        }
+        if build.defects.is_empty() {
+            Ok(found.into_iter().map(|(_, decision)| decision).collect())
+        } else {
+            Err(build.defects.into_vec())
+        }
+    }
+
+    fn contradict(&self, a: HandDecision, b: HandDecision) -> bool {
+        let grants_on = |grant: HandDecision, keep: HandDecision| match (grant.about, grant.must) {
+            (HandSubject::Proposal(id), Must::Grant { .. }) => {
+                keep.about == HandSubject::Flight(self.proposals[id].flight)
+            }
+            _ => false,
+        };
+        (a.about == b.about && a.must != b.must && !agree(a.must, b.must))
+            || grants_on(a, b)
+            || grants_on(b, a)
+    }
+
+    /// A decision in words.
+    fn told(&self, decision: HandDecision) -> String {
+        let about = match decision.about {
+            HandSubject::Proposal(id) => format!("proposal `{}`", self.proposals[id].name),
+            HandSubject::Flight(id) => format!("flight `{}`", self.flights[id].name),
+        };
+        match decision.must {
+            Must::Grant { option: Some(option) } => format!("grant {about} with option {option}"),
+            Must::Grant { option: None } => format!("grant {about}"),
+            Must::Refuse => format!("refuse {about}"),
+            Must::Keep => format!("keep {about} as filed"),
+        }
+    }
+}
+
+/// Whether two different decisions about one proposal agree: a grant with any option and one with
+/// a certain option do.
+fn agree(a: Must, b: Must) -> bool {
+    matches!(
+        (a, b),
+        (Must::Grant { option: None }, Must::Grant { .. })
+            | (Must::Grant { .. }, Must::Grant { option: None })
+    )
+}
 
 impl Build {
     pub(super) fn decisions(
@@ -13,6 +80,18 @@ impl Build {
         flights: &[Flight],
         proposals: &[Proposal],
     ) -> Vec<HandDecision> {
+        let found = self.resolved_decisions(parts, flights, proposals);
+        self.contradictions(&found, proposals);
+        found.into_iter().map(|(_, decision)| decision).collect()
+    }
+
+    /// Decisions in order, each once, with their place in the input.
+    fn resolved_decisions(
+        &mut self,
+        parts: &[DecisionParts],
+        flights: &[Flight],
+        proposals: &[Proposal],
+    ) -> Vec<(usize, HandDecision)> {
         let mut found: Vec<(usize, HandDecision)> = Vec::with_capacity(parts.len());
         for (i, row) in parts.iter().enumerate() {
             let about = match &row.about {
@@ -38,8 +117,7 @@ impl Build {
         }
         found.sort_by(|a, b| a.1.cmp(&b.1).then(a.0.cmp(&b.0)));
         found.dedup_by(|a, b| a.1 == b.1);
-        self.contradictions(&found, proposals);
-        found.into_iter().map(|(_, decision)| decision).collect()
+        found
     }
 
     fn decision_fits(
@@ -87,13 +165,7 @@ impl Build {
     fn contradictions(&mut self, found: &[(usize, HandDecision)], proposals: &[Proposal]) {
         for w in found.windows(2) {
             let ((first, a), (second, b)) = (w[0], w[1]);
-            // A grant with any option and one with a certain option agree.
-            let agree = matches!(
-                (a.must, b.must),
-                (Must::Grant { option: None }, Must::Grant { .. })
-                    | (Must::Grant { .. }, Must::Grant { option: None })
-            );
-            if a.about == b.about && !agree {
+            if a.about == b.about && !agree(a.must, b.must) {
                 self.contradiction(second, first);
             }
         }
