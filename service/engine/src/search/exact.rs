@@ -21,6 +21,8 @@ const STEPS: usize = 20_000;
 const TRIAL_STEPS: usize = 40;
 /// Most candidates tried at one node.
 const TRIALS: usize = 8;
+/// Most memory for open nodes, in bytes, about.
+const MEMORY: usize = 1 << 29;
 /// Further from a whole number counts as fractional.
 const FRACTIONAL: f64 = 1e-6;
 
@@ -91,6 +93,8 @@ pub(super) struct Tree<'i> {
     simplex: Simplex<'i>,
     known: Known,
     open: BinaryHeap<Node>,
+    /// More nodes than this take too much memory: the search ends.
+    most_open: usize,
     serial: u64,
     /// Mean loss of bound per unit of change, and of how many trials, down and up, by variable.
     losses: Vec<[(f64, u32); 2]>,
@@ -119,6 +123,7 @@ impl<'i> Tree<'i> {
             simplex: Simplex::new(index, relaxation),
             known,
             open: BinaryHeap::new(),
+            most_open: MEMORY / (8 * (index.value.len() + relaxation.right.len() + 1)),
             serial: 0,
             losses: vec![[(0.0, 0); 2]; index.value.len()],
             root_prices: vec![0.0; relaxation.right.len()],
@@ -188,6 +193,9 @@ impl<'i> Tree<'i> {
                 Fate::Branch { bound, var, first } => {
                     let (now, later) = self.branch(node, bound, var, first);
                     self.open.push(later);
+                    if self.open.len() > self.most_open {
+                        return;
+                    }
                     current = Some(now);
                     fresh = true;
                 }

@@ -28,6 +28,8 @@ pub mod model;
 #[cfg(test)]
 mod oracle;
 mod part;
+#[cfg(test)]
+mod paths;
 mod presolve;
 mod prices;
 mod progress;

@@ -71,6 +71,9 @@ impl Relaxation {
                 }),
             }
         }
+        for any_of in 0..index.any_of_rows.len() as u32 {
+            graph.add_any_of(index, any_of);
+        }
         graph.seal();
         let known = hints.cliques.iter().filter(|(clique, _)| graph.is_clique(clique));
         seeds.extend(known.map(|(clique, price)| (clique.clone(), None, *price)));
@@ -140,20 +143,7 @@ impl<'i> Graph<'i> {
     /// Adds the pairs that a row excludes. If the row says no more than that at most one of its
     /// candidates can be chosen, returns them.
     fn add_row(&mut self, index: &Index, row: u32) -> Option<Vec<u32>> {
-        let mut room = index.slack[row as usize];
-        let mut over = Vec::new();
-        for run in by_group(index, &index.row_terms[row]) {
-            let all = run.len() == index.vars(index.group_of[run[0].0 as usize]).len();
-            let least = run.iter().map(|term| term.1).min().unwrap_or(0);
-            let least = if all { least } else { least.min(0) };
-            room -= least;
-            for var in index.vars(index.group_of[run[0].0 as usize]) {
-                let delta = run.iter().find(|term| term.0 == var).map_or(0, |term| term.1);
-                if delta > least {
-                    over.push((delta - least, var));
-                }
-            }
-        }
+        let Over { room, mut over } = Over::new(index, row);
         if over.iter().all(|&(over, _)| over == 1) && room == 1 {
             let mut clique: Vec<u32> = over.iter().map(|&(_, var)| var).collect();
             clique.sort_unstable();
@@ -167,6 +157,24 @@ impl<'i> Graph<'i> {
             self.pair_all(&big);
         }
         None
+    }
+
+    /// Adds the pairs that break every row of an any-of by themselves.
+    fn add_any_of(&mut self, index: &Index, any_of: u32) {
+        let rows: Vec<Over> =
+            index.any_of_rows[any_of].iter().map(|&row| Over::new(index, row)).collect();
+        let Some(first) = rows.first() else { return };
+        if first.over.len() > WIDEST {
+            return;
+        }
+        for (position, &(_, a)) in first.over.iter().enumerate() {
+            for &(_, b) in &first.over[position + 1..] {
+                let apart = index.group_of[a as usize] != index.group_of[b as usize];
+                if apart && rows.iter().all(|row| row.of(a) + row.of(b) > row.room) {
+                    self.pairs.extend([(a, b), (b, a)]);
+                }
+            }
+        }
     }
 
     fn pair_all(&mut self, vars: &[u32]) {
@@ -254,6 +262,37 @@ impl<'i> Graph<'i> {
                 }
             }
         }
+    }
+}
+
+/// What candidates add to a row beyond the least that their group does, where that is more than 0,
+/// and the room that the least sum leaves.
+struct Over {
+    room: i64,
+    over: Vec<(i64, u32)>,
+}
+
+impl Over {
+    fn new(index: &Index, row: u32) -> Self {
+        let mut room = index.slack[row as usize];
+        let mut over = Vec::new();
+        for run in by_group(index, &index.row_terms[row]) {
+            let all = run.len() == index.vars(index.group_of[run[0].0 as usize]).len();
+            let least = run.iter().map(|term| term.1).min().unwrap_or(0);
+            let least = if all { least } else { least.min(0) };
+            room -= least;
+            for var in index.vars(index.group_of[run[0].0 as usize]) {
+                let delta = run.iter().find(|term| term.0 == var).map_or(0, |term| term.1);
+                if delta > least {
+                    over.push((delta - least, var));
+                }
+            }
+        }
+        Self { room, over }
+    }
+
+    fn of(&self, var: u32) -> i64 {
+        self.over.iter().find(|over| over.1 == var).map_or(0, |over| over.0)
     }
 }
 
