@@ -66,8 +66,8 @@ fn exchange_all(state: &mut State<'_>, budget: &mut Budget<'_>) {
     }
 }
 
-/// Terms from which a row is too long to look all over it for an exchange.
-const LONG: usize = 600;
+/// A row with more terms is too long to look all over it for an exchange.
+const LONG: usize = 200;
 
 /// Switches to `var`, moves what blocks it to the least loss, and fills the room that this leaves.
 /// Undone unless the objective rises.
@@ -228,7 +228,10 @@ fn fill_around(
         near.extend(index.hard[left].iter().copied());
         near.extend(index.soft[left].iter().map(|&(var, _)| var));
         for &(row, _) in &index.var_terms[left] {
-            near.extend(index.row_terms[row].iter().map(|&(var, _)| var));
+            let terms = &index.row_terms[row];
+            if terms.len() <= LONG {
+                near.extend(terms.iter().map(|&(var, _)| var));
+            }
         }
     }
     near.sort_unstable();
