@@ -12,7 +12,11 @@
 //! only the stop flag comes from outside.
 //!
 //! In reading order: [`model`] and [`check`] say what is asked for and judge an answer slowly and
-//! plainly; `index` and `state` make single switches cheap; `greedy` and `improve` find plans.
+//! plainly; `index` and `state` make single switches cheap; `greedy` and `improve` find plans;
+//! `presolve` and `split` settle what reasoning can and cut the rest into parts; `relaxation`,
+//! `prices`, `simplex` (on `factor`) and `exact` bound and close a part, in the order that `part`
+//! gives; `solve` is the whole. `forced`, `further` and `ranking` answer later questions from what is
+//! known by then; `budget` and `progress` count and tell.
 
 mod budget;
 pub mod check;
