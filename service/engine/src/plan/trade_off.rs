@@ -10,6 +10,9 @@ use crate::traffic::Traffic;
 
 /// Fuel is limited in parts of this many to a kilogram.
 const PARTS_A_KG: f64 = 10.0;
+/// Most work for one point: amounts of fuel in one row over all flights make hard problems, and a
+/// curve is read by eye.
+const MOST_WORK: u64 = 20_000_000;
 /// Largest amount of fuel of one candidate that a row can tell, kg.
 const MOST_KG: f64 = 1e8;
 
@@ -29,7 +32,7 @@ pub fn trade_off(
     let search_watch = search::Watch { stop: &stop, progress: &|_| () };
     let ask = SolveOptions {
         seed: options.seed,
-        work: options.work,
+        work: options.work.min(MOST_WORK),
         gap: options.gap,
         ..SolveOptions::default()
     };

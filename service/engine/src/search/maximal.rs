@@ -17,6 +17,8 @@ use super::ranking::RankOptions;
 use super::solve::{Search, Solution, SolveOptions, Stopped};
 use super::state::State;
 
+/// Most terms of the rows that cut off what is around one plan.
+const MOST_TERMS: usize = 300_000;
 /// Most plans that are cut off before the search for one more is given up.
 const MOST_ROUNDS: usize = 200;
 
@@ -44,6 +46,7 @@ impl Search<'_> {
             if plans.len() == 1 {
                 rows.extend(neighbours.settled(&last.choices));
             }
+            rows.extend(neighbours.lesser(&last.choices));
             match self.next_maximal(&mut rows, &neighbours, &plans, options, watch)? {
                 Some(next) => plans.push(next),
                 None => break,
@@ -63,8 +66,11 @@ impl Search<'_> {
         let start = plans.last().map(|last| last.choices.clone());
         let ask = SolveOptions { start, ..options.solve.clone() };
         let meter = AtomicU64::new(0);
+        let mut work = 0;
         for _ in 0..MOST_ROUNDS {
-            let next = self.solve_within(rows, &ask, watch)?;
+            let left = SolveOptions { work: options.solve.work - work, ..ask.clone() };
+            let next = self.solve_within(rows, &left, watch)?;
+            work += next.work;
             if next.bound.is_none() {
                 return Ok(None);
             }
@@ -85,7 +91,7 @@ impl Search<'_> {
                 }
                 return Ok(Some(found));
             }
-            if next.stopped == Stopped::Asked {
+            if next.stopped == Stopped::Asked || work >= options.solve.work {
                 return Ok(None);
             }
             rows.extend(neighbours.cuts(&before));
@@ -163,6 +169,34 @@ impl<'i> Neighbours<'i> {
                 terms: vec![(choice(group, choices[group as usize]), -1)],
             })
             .collect()
+    }
+
+    /// A row for each lesser candidate of each group: beside what the groups around it choose in
+    /// this plan, which is feasible, it could be switched to what the plan chooses. No rows where
+    /// they would be too long in all.
+    fn lesser(&self, choices: &[u32]) -> Vec<Row> {
+        let mut rows = Vec::new();
+        let mut terms_left = MOST_TERMS;
+        for group in 0..self.index.groups() {
+            let to = self.index.vars(group).start + choices[group as usize];
+            let value = |var: u32| self.index.value[var as usize];
+            for from in self.index.allowed_vars(group).filter(|&var| value(var) < value(to)) {
+                // What is gained must not depend on others.
+                if !self.index.soft[from].is_empty() || !self.index.soft[to].is_empty() {
+                    continue;
+                }
+                let around = self.of(from, to);
+                let Some(left) = terms_left.checked_sub(around.len() + 1) else {
+                    return Vec::new();
+                };
+                terms_left = left;
+                let slack = around.len() as i64;
+                let chosen = |group: u32| (choice(group, choices[group as usize]), 1);
+                let terms = around.into_iter().map(chosen).chain([(self.index.choice(from), 1)]);
+                rows.push(Row { slack, terms: terms.collect() });
+            }
+        }
+        rows
     }
 
     /// A row for each switch that is possible and gains.

@@ -30,7 +30,7 @@ pub struct SolveOptions {
 
 impl Default for SolveOptions {
     fn default() -> Self {
-        Self { seed: 0, work: 20_000_000_000, gap: 0.0, start: None }
+        Self { seed: 0, work: 200_000_000, gap: 0.0, start: None }
     }
 }
 
