@@ -1,18 +1,27 @@
 //! "May this flight change level now?" over gRPC on loopback, one caller, against a day of 17 000
-//! flights and 450 sectors; beside it an empty call (a health check) of the same server in the same
-//! run, to which the answer's time is to be compared.
+//! flights and 450 sectors (that of the engine's benches, a real one where `RIMESHIFT_DAY` names its
+//! folder); beside it an empty call (a health check) of the same server in the same run, to which the
+//! answer's time is to be compared.
 
 #![expect(clippy::expect_used, reason = "a bench fails by panicking")]
+
+#[path = "../engine/benches/support/mod.rs"]
+mod support;
 
 use std::hint::black_box;
 
 use criterion::{Criterion, criterion_group, criterion_main};
 use prost_types::Timestamp;
+use rimeshift_engine::change::change_levels;
+use rimeshift_engine::day::{Day, Flight, Stretch};
+use rimeshift_engine::ids::FlightId;
+use rimeshift_engine::traffic::Traffic;
 use rimeshift_proto::v1;
 use rimeshift_proto::v1::day_service_client::DayServiceClient;
 use rimeshift_proto::v1::load_day_request::Content;
 use rimeshift_proto::v1::plan_service_client::PlanServiceClient;
 use rimeshift_service::{Settings, serve};
+use support::{Sectors, day, stretches};
 use tokio::net::TcpListener;
 use tokio::runtime::Runtime;
 use tonic::transport::server::TcpIncoming;
@@ -22,96 +31,103 @@ use tonic_health::pb::health_client::HealthClient;
 
 /// 2031-03-04T00:00:00Z.
 const MIDNIGHT: i64 = 1_930_348_800;
-const FLIGHTS: u32 = 17_000;
-const COLUMNS: u32 = 15;
-const ROWS: u32 = 10;
-const FLOORS_FT: [f64; 4] = [24_500.0, 33_500.0, 37_500.0, 66_000.0];
 
 fn at(time_s: f64) -> Option<Timestamp> {
     Some(Timestamp { seconds: MIDNIGHT + time_s as i64, nanos: 0 })
 }
 
-/// A number from 0 to 1 that looks random, the same each time (a multiplicative hash).
-fn spread(number: u32, salt: u32) -> f64 {
-    let mixed = number.wrapping_mul(2_654_435_761).wrapping_add(salt.wrapping_mul(40_503));
-    f64::from(mixed.rotate_left(13).wrapping_mul(2_246_822_519) >> 8) / f64::from(1u32 << 24)
-}
-
-/// A flight of about 700 NM in cruise over the region, at a level of its direction.
-fn flight(number: u32) -> v1::Flight {
-    let east = number.is_multiple_of(2);
-    let start_s = 80_000.0 * spread(number, 1);
-    let (lon, lat) = (15.0 * spread(number, 2), 40.0 + 18.0 * spread(number, 3));
-    let (rise, steps) = (2.0 * spread(number, 4) - 1.0, 9);
-    let level_ft =
-        29_000.0 + 2000.0 * (6.0 * spread(number, 5)).floor() + f64::from(!east) * 1000.0;
-    let step = |k: i32| f64::from(k);
-    let lon_at = |k: i32| if east { lon + 2.0 * step(k) } else { 30.0 - lon - 2.0 * step(k) };
-    let points = v1::Points {
-        epoch: at(0.0),
-        seconds_after_epoch: (0..=steps).map(|k| start_s + 700.0 * step(k)).collect(),
-        lon_deg: (0..=steps).map(lon_at).collect(),
-        lat_deg: (0..=steps).map(|k| lat + rise * step(k) / 9.0).collect(),
-        level_ft: vec![level_ft; steps as usize + 1],
-        fix: Vec::new(),
+/// The day's sectors and flights as rows.
+fn rows_of(day: &Day) -> Vec<v1::DayRows> {
+    let ring = |ring: &Vec<[f64; 2]>| v1::Ring {
+        lon_deg: ring.iter().map(|place| place[0]).collect(),
+        lat_deg: ring.iter().map(|place| place[1]).collect(),
     };
-    v1::Flight {
-        flight: format!("F{number:05}"),
-        departure: "XAAA".to_owned(),
-        destination: "XBBB".to_owned(),
-        aircraft: "JET".to_owned(),
-        points: Some(points),
+    let sectors = day.sectors.iter().map(|sector| v1::Sector {
+        sector: sector.name.clone(),
+        volumes: sector
+            .volumes
+            .iter()
+            .map(|volume| v1::Volume {
+                rings: volume.polygon.rings().iter().map(ring).collect(),
+                floor_ft: volume.floor_ft,
+                ceiling_ft: volume.ceiling_ft,
+            })
+            .collect(),
         ..Default::default()
-    }
-}
-
-fn sectors() -> (Vec<v1::Sector>, Vec<v1::Capacity>) {
-    let mut sectors = Vec::new();
-    for (column, row, layer) in (0..COLUMNS)
-        .flat_map(|c| (0..ROWS).flat_map(move |r| (0..3_usize).map(move |layer| (c, r, layer))))
-    {
-        let (west, south) = (2.2 * f64::from(column) - 1.0, 39.0 + 2.1 * f64::from(row));
-        let (east, north) = (west + 2.2, south + 2.1);
-        sectors.push(v1::Sector {
-            sector: format!("S{column:02}{row:02}{layer}"),
-            volumes: vec![v1::Volume {
-                rings: vec![v1::Ring {
-                    lon_deg: vec![west, east, east, west, west],
-                    lat_deg: vec![south, south, north, north, south],
-                }],
-                floor_ft: FLOORS_FT[layer],
-                ceiling_ft: FLOORS_FT[layer + 1],
-            }],
-            ..Default::default()
-        });
-    }
-    let capacity = |sector: &v1::Sector| v1::Capacity {
-        sector: sector.sector.clone(),
-        from: at(0.0),
-        until: at(86_400.0),
+    });
+    let capacities = day.sectors.iter().map(|sector| v1::Capacity {
+        sector: sector.name.clone(),
+        from: at(-86_400.0),
+        until: at(2.0 * 86_400.0),
         entries_per_hour: Some(40.0),
         occupancy_limit: Some(18.0),
         ..Default::default()
+    });
+    let flight = |flight: &Flight| {
+        let points = flight.profile.points();
+        v1::Flight {
+            flight: flight.name.clone(),
+            departure: "XAAA".to_owned(),
+            destination: "XBBB".to_owned(),
+            aircraft: "JET".to_owned(),
+            points: Some(v1::Points {
+                epoch: at(0.0),
+                seconds_after_epoch: points.iter().map(|p| p.time_s).collect(),
+                lon_deg: points.iter().map(|p| p.lon_deg).collect(),
+                lat_deg: points.iter().map(|p| p.lat_deg).collect(),
+                level_ft: points.iter().map(|p| p.level_ft).collect(),
+                fix: Vec::new(),
+            }),
+            ..Default::default()
+        }
     };
-    let capacities = sectors.iter().map(capacity).collect();
-    (sectors, capacities)
+    let mut rows = vec![v1::DayRows {
+        sectors: sectors.collect(),
+        capacities: capacities.collect(),
+        ..Default::default()
+    }];
+    rows.extend(day.flights.as_slice().chunks(1000).map(|part| v1::DayRows {
+        flights: part.iter().map(flight).collect(),
+        ..Default::default()
+    }));
+    rows
 }
 
-async fn load(channel: &Channel) {
+/// A valid change of each of some flights.
+fn questions(day: Day) -> Vec<v1::AskChangeRequest> {
+    let traffic = Traffic::new(day);
+    let flights = traffic.day.flights.len();
+    let question = |i: usize| {
+        let id = FlightId((i * 37 % flights) as u32);
+        let flight = traffic.flight(id);
+        let valid = |stretch: &&Stretch| {
+            change_levels(&traffic.day, flight, &traffic.tracks[id], &[**stretch]).is_ok()
+        };
+        let stretch = *stretches(&traffic.day, id).iter().find(valid)?;
+        Some(v1::AskChangeRequest {
+            day: "days/bench".to_owned(),
+            plan: String::new(),
+            change: Some(v1::Change {
+                flight: flight.name.clone(),
+                stretches: vec![v1::Stretch {
+                    level_ft: stretch.level_ft,
+                    from: stretch.from_s.and_then(at),
+                    until: stretch.until_s.and_then(at),
+                }],
+                figures: None,
+            }),
+        })
+    };
+    (0..flights).filter_map(question).take(4000).collect()
+}
+
+async fn load(channel: &Channel, rows: Vec<v1::DayRows>) {
     let header = v1::LoadDayHeader {
         day_id: "bench".to_owned(),
         date: Some(v1::Date { year: 2031, month: 3, day: 4 }),
         region: "Invented Sea".to_owned(),
         ..Default::default()
     };
-    let (sectors, capacities) = sectors();
-    let mut rows = vec![v1::DayRows { sectors, capacities, ..Default::default() }];
-    let flights: Vec<v1::Flight> = (0..FLIGHTS).map(flight).collect();
-    rows.extend(
-        flights
-            .chunks(1000)
-            .map(|part| v1::DayRows { flights: part.to_vec(), ..Default::default() }),
-    );
     let messages =
         std::iter::once(Content::Header(header)).chain(rows.into_iter().map(Content::Rows));
     let messages: Vec<_> =
@@ -120,27 +136,10 @@ async fn load(channel: &Channel) {
     days.load_day(tokio_stream::iter(messages)).await.expect("a sound day");
 }
 
-fn question(number: u32) -> v1::AskChangeRequest {
-    let filed = flight(number);
-    let points = filed.points.unwrap_or_default();
-    let start_s = points.seconds_after_epoch.first().copied().unwrap_or(0.0);
-    let level_ft = points.level_ft.first().copied().unwrap_or(0.0);
-    v1::AskChangeRequest {
-        day: "days/bench".to_owned(),
-        plan: String::new(),
-        change: Some(v1::Change {
-            flight: filed.flight,
-            stretches: vec![v1::Stretch {
-                level_ft: level_ft + 2000.0,
-                from: at(start_s + 1200.0),
-                until: at(start_s + 4200.0),
-            }],
-            figures: None,
-        }),
-    }
-}
-
 fn ask(c: &mut Criterion) {
+    let day = day(Sectors::Lattice);
+    let rows = rows_of(&day);
+    let questions = questions(day);
     let runtime = Runtime::new().expect("a runtime");
     let channel = runtime.block_on(async {
         let listener = TcpListener::bind("127.0.0.1:0").await.expect("a port");
@@ -149,7 +148,7 @@ fn ask(c: &mut Criterion) {
         tokio::spawn(serve(incoming, Settings::default(), std::future::pending()));
         let endpoint = Endpoint::from_shared(format!("http://{address}")).expect("an address");
         let channel = endpoint.tcp_nodelay(true).connect().await.expect("a connection");
-        load(&channel).await;
+        load(&channel, rows).await;
         channel
     });
     let mut health = HealthClient::new(channel.clone());
@@ -163,8 +162,8 @@ fn ask(c: &mut Criterion) {
     let mut next = 0;
     c.bench_function("ask", |b| {
         b.iter(|| {
-            next = (next + 37) % FLIGHTS;
-            let call = plans.ask_change(question(next));
+            next = (next + 1) % questions.len();
+            let call = plans.ask_change(questions[next].clone());
             black_box(runtime.block_on(call).expect("an answer"));
         });
     });

@@ -1,6 +1,6 @@
 //! Decisions by hand and reasons in words, for errors.
 
-use rimeshift_engine::answer::{Constraint, Place, Reason};
+use rimeshift_engine::answer::{Constraint, LoadMeasure, Place, Reason};
 use rimeshift_engine::day::{HandDecision, HandSubject, Must};
 use rimeshift_engine::units::m_to_nm;
 
@@ -34,7 +34,8 @@ impl Answers<'_> {
                     }
                 };
                 format!(
-                    "{measure:?} of {place} from {} would be {count} where {limit} is allowed",
+                    "{} of {place} from {} would be {count} where {limit} is allowed",
+                    measure_in_words(*measure),
                     clock_time(*from_s)
                 )
             }
@@ -60,9 +61,24 @@ impl Answers<'_> {
             Constraint::BetterOption { taken } => format!("option {taken} is taken"),
             Constraint::NotWorthIt => "its net benefit is not positive".to_owned(),
             Constraint::ByHand => "other decisions by hand".to_owned(),
-            Constraint::Invalid(rule) => format!("it breaks a rule of level changes ({rule:?})"),
+            Constraint::Invalid(rule) => {
+                let name = self.rule(rule).rule().as_str_name().to_lowercase().replace('_', " ");
+                let name = name.trim_start_matches("change rule ");
+                format!("it breaks a rule of level changes ({name})")
+            }
         };
         format!("option {}: {what}", reason.option)
+    }
+}
+
+fn measure_in_words(measure: LoadMeasure) -> &'static str {
+    match measure {
+        LoadMeasure::Entries => "entries an hour",
+        LoadMeasure::Occupancy => "occupancy",
+        LoadMeasure::Lasting => "lasting occupancy",
+        LoadMeasure::LevelChanges => "level changes an hour",
+        LoadMeasure::Arrivals => "arrivals an hour",
+        LoadMeasure::Departures => "departures an hour",
     }
 }
 
