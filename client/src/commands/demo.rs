@@ -1,6 +1,7 @@
 //! `rimeshift demo`: checks and plans an invented day that comes with the program.
 
 use super::by_hand::ByHandArgs;
+use super::new::write_new;
 use super::plan::SearchArgs;
 use super::session::Session;
 use super::{check, plan};
@@ -8,7 +9,6 @@ use crate::exit::{Answered, Failure};
 use crate::plan_folder::{self, Existing};
 use crate::report::plan::PlanReport;
 use crate::screen::Form;
-use crate::tables::findings::Problem;
 use std::fs;
 use std::io;
 use std::path::{Path, PathBuf};
@@ -59,7 +59,7 @@ pub(crate) async fn run(args: &DemoArgs, session: &Session<'_>) -> Result<Answer
         tempfile::tempdir().map_err(|error| Failure::writing(&std::env::temp_dir(), &error))?;
     let folder = match &args.write {
         Some(folder) => {
-            write_day(folder)?;
+            write_new(folder, write_files)?;
             folder.as_path()
         }
         None => {
@@ -98,23 +98,6 @@ pub(crate) async fn run(args: &DemoArgs, session: &Session<'_>) -> Result<Answer
         }
     }
     Ok(Answered::Plainly)
-}
-
-/// Writes the day to a folder that is not there yet, or is empty.
-fn write_day(folder: &Path) -> Result<(), Failure> {
-    let is_free = match fs::read_dir(folder) {
-        Ok(mut entries) => entries.next().is_none(),
-        Err(error) => error.kind() == io::ErrorKind::NotFound,
-    };
-    if !is_free {
-        return Err(Failure::input(
-            folder.display(),
-            Problem::with_hint("is there already", "give a folder that does not exist yet"),
-        ));
-    }
-    fs::create_dir_all(folder)
-        .and_then(|()| write_files(folder))
-        .map_err(|error| Failure::writing(folder, &error))
 }
 
 fn write_files(folder: &Path) -> io::Result<()> {

@@ -36,7 +36,9 @@ pub(crate) struct NewArgs {
 /// When something is there, or the disk takes no more.
 pub(crate) fn run(args: &NewArgs, screen: &Screen) -> Result<Answered, Failure> {
     let folder = args.folder.as_path();
-    write(folder)?;
+    write_new(folder, |folder| {
+        FILES.iter().try_for_each(|(name, content)| fs::write(folder.join(name), content))
+    })?;
     let shown = folder.display().to_string();
     screen.answer(&match screen.form {
         Form::Json => format!("{}\n", serde_json::json!({ "folder": shown })),
@@ -49,7 +51,14 @@ pub(crate) fn run(args: &NewArgs, screen: &Screen) -> Result<Answered, Failure> 
     Ok(Answered::Plainly)
 }
 
-fn write(folder: &Path) -> Result<(), Failure> {
+/// Writes files that come with the program to a folder that is not there yet, or is empty.
+///
+/// # Errors
+/// When something is there, or the disk takes no more.
+pub(super) fn write_new(
+    folder: &Path,
+    write: impl FnOnce(&Path) -> io::Result<()>,
+) -> Result<(), Failure> {
     let is_free = match fs::read_dir(folder) {
         Ok(mut entries) => entries.next().is_none(),
         Err(error) => error.kind() == io::ErrorKind::NotFound,
@@ -60,8 +69,6 @@ fn write(folder: &Path) -> Result<(), Failure> {
         return Err(Failure::input(folder.display(), problem));
     }
     fs::create_dir_all(folder)
-        .and_then(|()| {
-            FILES.iter().try_for_each(|(name, content)| fs::write(folder.join(name), content))
-        })
+        .and_then(|()| write(folder))
         .map_err(|error| Failure::writing(folder, &error))
 }

@@ -13,7 +13,7 @@ use super::budget::{Budget, Watch};
 use super::improve;
 use super::index::Index;
 use super::model::{Defect, Row, choice};
-use super::ranking::RankOptions;
+use super::ranking::{RankOptions, differ};
 use super::solve::{Search, Solution, SolveOptions, Stopped};
 use super::state::State;
 
@@ -98,13 +98,6 @@ impl Search<'_> {
         }
         Ok(None)
     }
-}
-
-/// Of the choices of a better plan at most all but so many may be made again.
-fn differ(choices: &[u32], at_least: usize) -> Row {
-    let terms =
-        (0u32..).zip(choices).map(|(group, &candidate)| (choice(group, candidate), 1)).collect();
-    Row { slack: choices.len() as i64 - at_least as i64, terms }
 }
 
 /// Which groups have a say in whether a switch is possible.

@@ -52,7 +52,8 @@ pub fn rank(
     Ok(Search::new(model)?.rank(options, watch))
 }
 
-fn differ(choices: &[u32], at_least: usize) -> Row {
+/// A row: of the choices of a better plan at most all but so many may be made again.
+pub(super) fn differ(choices: &[u32], at_least: usize) -> Row {
     let terms =
         (0u32..).zip(choices).map(|(group, &candidate)| (choice(group, candidate), 1)).collect();
     Row { slack: choices.len() as i64 - at_least as i64, terms }
